@@ -1,0 +1,1 @@
+"""The command line: commands, tables and exit codes."""

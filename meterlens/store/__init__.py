@@ -1,0 +1,1 @@
+"""The store: the DuckDB file, the queries, the reading of exports and the derivation."""

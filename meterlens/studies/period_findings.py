@@ -1,0 +1,130 @@
+"""Findings out of periods: one a kind, with the worst stretch named."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from meterlens.settings import Service
+from meterlens.studies.findings import Confidence, Finding, Severity
+
+__all__ = ["period_findings"]
+
+_SEVERITY: dict[str, Severity] = {
+    "low-pf": "act",
+    "leading": "look",
+    "current-imbalance": "look",
+    "voltage-imbalance": "act",
+    "voltage": "act",
+    "overload": "urgent",
+}
+
+_NEXT_STEP = {
+    "low-pf": "See which load runs in these hours and whether a capacitor bank has dropped out.",
+    "leading": "Look for fixed capacitors, filters or cables left on at light load.",
+    "current-imbalance": "See which single-phase load runs in these hours; a qualified person "
+    "may move it to another phase.",
+    "voltage-imbalance": "Compare with a measured line-to-line voltage; if it stands, ask the "
+    "utility and spare three-phase motors meanwhile.",
+    "voltage": "Check the transformer tap and ask the utility for its own record.",
+    "overload": "Have a qualified person check the main breaker, cable and transformer; shift "
+    "or shed load before the next such hour.",
+}
+
+
+def period_findings(
+    service: Service, periods: list[dict[str, Any]], *, sign_is_assumed: bool
+) -> list[Finding]:
+    """One finding for each kind of period that occurs.
+
+    Parameters
+    ----------
+    service : Service
+    periods : list of dict
+        As `service_periods` gives them.
+    sign_is_assumed : bool
+        Whether lead or lag is an assumption of the column map.
+
+    Returns
+    -------
+    list of Finding
+    """
+    by_kind: dict[str, list[dict[str, Any]]] = {}
+    for period in periods:
+        by_kind.setdefault(period["kind"], []).append(period)
+    return [_finding(service, kind, group, sign_is_assumed) for kind, group in by_kind.items()]
+
+
+def _worst(kind: str, group: list[dict[str, Any]]) -> dict[str, Any]:
+    if kind == "voltage":
+        return max(group, key=lambda p: abs(p["worst"] - 1.0))
+    sign = -1.0 if kind in ("low-pf", "leading") else 1.0
+    return max(group, key=lambda p: sign * p["worst"])
+
+
+def _finding(
+    service: Service, kind: str, group: list[dict[str, Any]], sign_is_assumed: bool
+) -> Finding:
+    worst = _worst(kind, group)
+    hours = sum(p["hours"] for p in group)
+    often = "once" if len(group) == 1 else f"in {len(group)} periods"
+    when = worst["start"][:16].replace("T", " ")
+    text = _sentence(service, kind, worst, f"{hours:.4g} h {often}", when, group)
+    confidence: Confidence = "high"
+    if kind == "voltage-imbalance":
+        confidence = "low"
+        text += " The voltage angles are assumed 120° apart, so this is an estimate."
+    elif kind in ("low-pf", "leading") and sign_is_assumed:
+        confidence = "low"
+        text += " Lagging or leading is an assumption of the column map, not a measurement."
+    return Finding(
+        kind=kind,
+        service=service.id,
+        phase=worst["phase"],
+        start=worst["start"],
+        end=worst["end"],
+        severity=_SEVERITY[kind],
+        magnitude=worst["worst"],
+        unit=worst["unit"],
+        confidence=confidence,
+        text=text,
+        next_step=_NEXT_STEP[kind],
+    )
+
+
+def _sentence(
+    service: Service,
+    kind: str,
+    worst: dict[str, Any],
+    total: str,
+    when: str,
+    group: list[dict[str, Any]],
+) -> str:
+    size = worst["worst"]
+    phase = ""
+    if worst["phase"]:
+        phase = f" on phase {service.phase_labels['abc'.index(worst['phase'])]}"
+    if kind == "low-pf":
+        kvarh = sum(p["kvarh_above_target"] for p in group)
+        return (
+            f"Lagging power factor under {service.target_pf:g} for {total}, lowest {size:.3f} in "
+            f"the period from {when}; {kvarh:,.0f} kvarh above target."
+        )
+    if kind == "leading":
+        return f"Leading power factor for {total}, lowest {size:.3f} in the period from {when}."
+    if kind == "current-imbalance":
+        return (
+            f"Phase currents apart for {total}, at most {size:.1%} from their mean{phase} in the "
+            f"period from {when}."
+        )
+    if kind == "voltage-imbalance":
+        return f"Voltage imbalance for {total}, at most {size:.2%} in the period from {when}."
+    if kind == "voltage":
+        low, high = service.voltage_band_pu
+        return (
+            f"Voltage outside {low:g} to {high:g} of nominal for {total}, {size:.3f} at the "
+            f"worst{phase} in the period from {when}."
+        )
+    return (
+        f"Current above the {service.rating_a:g} A rating for {total}, {size:.1%} of it at the "
+        f"highest{phase} in the period from {when}."
+    )

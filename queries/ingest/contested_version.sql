@@ -1,0 +1,93 @@
+-- Every version, earlier and present, of the intervals that a file and another line both wrote.
+-- args: $service, $file_id
+-- row: one version of one interval, oldest first; the present one comes last
+with contested as (
+    select distinct start_utc
+    from superseded_reading
+    where service = $service
+        and (file_id = $file_id or by_file_id = $file_id)
+)
+select
+    epoch_us(start_utc) as start_us,
+    interval_min,
+    file_id,
+    line,
+    given,
+    v_a,
+    v_b,
+    v_c,
+    v_ab,
+    v_bc,
+    v_ca,
+    i_a,
+    i_b,
+    i_c,
+    i_n_metered_a,
+    pf_exported_a,
+    pf_exported_b,
+    pf_exported_c,
+    pf_exported_total,
+    lead_lag_a,
+    lead_lag_b,
+    lead_lag_c,
+    lead_lag_total,
+    p_metered_a_kw,
+    p_metered_b_kw,
+    p_metered_c_kw,
+    q_metered_a_kvar,
+    q_metered_b_kvar,
+    q_metered_c_kvar,
+    s_metered_a_kva,
+    s_metered_b_kva,
+    s_metered_c_kva,
+    p_metered_kw,
+    q_metered_kvar,
+    s_metered_kva,
+    by_file_id,
+    by_line
+from superseded_reading
+where service = $service
+    and start_utc in (select start_utc from contested)
+union all
+select
+    epoch_us(start_utc) as start_us,
+    interval_min,
+    file_id,
+    line,
+    given,
+    v_a,
+    v_b,
+    v_c,
+    v_ab,
+    v_bc,
+    v_ca,
+    i_a,
+    i_b,
+    i_c,
+    i_n_metered_a,
+    pf_exported_a,
+    pf_exported_b,
+    pf_exported_c,
+    pf_exported_total,
+    lead_lag_a,
+    lead_lag_b,
+    lead_lag_c,
+    lead_lag_total,
+    p_metered_a_kw,
+    p_metered_b_kw,
+    p_metered_c_kw,
+    q_metered_a_kvar,
+    q_metered_b_kvar,
+    q_metered_c_kvar,
+    s_metered_a_kva,
+    s_metered_b_kva,
+    s_metered_c_kva,
+    p_metered_kw,
+    q_metered_kvar,
+    s_metered_kva,
+    2147483647 as by_file_id,
+    0 as by_line
+from reading
+where service = $service
+    and start_utc in (select start_utc from contested)
+order by start_us, by_file_id, by_line;

@@ -1,0 +1,43 @@
+-- Readings in UTC with the site's local time; numbers as the export printed them.
+-- args: none
+-- row: one interval of one service
+create or replace view interval as
+select
+    service,
+    start_utc,
+    start_utc + to_minutes(utc_offset_min) as start_local,
+    interval_min,
+    utc_offset_min,
+    v_a,
+    v_b,
+    v_c,
+    v_ab,
+    v_bc,
+    v_ca,
+    i_a,
+    i_b,
+    i_c,
+    i_n_metered_a,
+    pf_exported_a,
+    pf_exported_b,
+    pf_exported_c,
+    pf_exported_total,
+    lead_lag_a,
+    lead_lag_b,
+    lead_lag_c,
+    lead_lag_total,
+    p_metered_a_kw,
+    p_metered_b_kw,
+    p_metered_c_kw,
+    q_metered_a_kvar,
+    q_metered_b_kvar,
+    q_metered_c_kvar,
+    s_metered_a_kva,
+    s_metered_b_kva,
+    s_metered_c_kva,
+    p_metered_kw,
+    q_metered_kvar,
+    s_metered_kva,
+    file_id,
+    line
+from reading;

@@ -1,0 +1,45 @@
+-- Stored readings that a later line replaced, as they were before.
+-- args: none
+-- row: one replaced version of one interval
+create or replace view history as
+select
+    h.service,
+    h.start_utc,
+    h.start_utc + to_minutes(h.utc_offset_min) as start_local,
+    h.interval_min,
+    h.v_a,
+    h.v_b,
+    h.v_c,
+    h.v_ab,
+    h.v_bc,
+    h.v_ca,
+    h.i_a,
+    h.i_b,
+    h.i_c,
+    h.i_n_metered_a,
+    h.pf_exported_a,
+    h.pf_exported_b,
+    h.pf_exported_c,
+    h.pf_exported_total,
+    h.lead_lag_a,
+    h.lead_lag_b,
+    h.lead_lag_c,
+    h.lead_lag_total,
+    h.p_metered_a_kw,
+    h.p_metered_b_kw,
+    h.p_metered_c_kw,
+    h.q_metered_a_kvar,
+    h.q_metered_b_kvar,
+    h.q_metered_c_kvar,
+    h.s_metered_a_kva,
+    h.s_metered_b_kva,
+    h.s_metered_c_kva,
+    h.p_metered_kw,
+    h.q_metered_kvar,
+    h.s_metered_kva,
+    h.file_id,
+    h.line,
+    h.by_file_id as replaced_by_file_id,
+    h.by_line as replaced_by_line
+from superseded_reading as h
+where h.replaced;
