@@ -24,6 +24,8 @@ _ROW_PX = 46
 def periods(record: Record, entries: list[dict[str, Any]]) -> Figure:
     """Draw the periods of each kind as bars on the time line."""
     title = "Periods"
+    if not entries or not record.grid.segments:
+        return Figure("periods", title, "", "", missing="No period of any kind was found.")
     kinds = list(PERIOD_KINDS)
     kinds += sorted({str(e.get("kind")) for e in entries} - set(kinds))
     kept = _longest(entries)
@@ -61,9 +63,6 @@ def periods(record: Record, entries: list[dict[str, Any]]) -> Figure:
     if len(kept) < len(entries):
         caption += f" The {len(kept)} longest of {len(entries)} periods are drawn."
     label = f"Time line of {len(entries)} periods in {len(kinds)} kinds."
-    # A record without a single period is still worth showing: it says "none".
-    if not record.grid.segments:
-        return Figure("periods", title, "", "", missing="There are no intervals to look at.")
     return Figure("periods", title, caption, label, traces, layout)
 
 

@@ -69,7 +69,7 @@ def fact_list(service: ServiceFacts) -> list[tuple[str, str]]:
         ("Nominal voltage", f"{number(volts)} V line to line" if volts else UNKNOWN),
         ("Rating", f"{number(service.rating_a)} A a phase" if service.rating_a else "not given"),
         ("Target power factor", f"{service.target_pf:g} lagging"),
-        ("Voltage band", f"{low:g} to {high:g} per unit"),
+        ("Voltage band", f"{low:g}–{high:g} pu"),
         ("Demand window", f"{service.demand_window_min} min"),
         ("Clock", service.timezone),
     ]
@@ -86,11 +86,11 @@ def readouts_of(page: ServicePage) -> list[tuple[str, str, str]]:
     return [
         ("Energy", f"{number(energy, 0)} kWh", f"{percent(month.get('completeness'))} recorded"),
         ("Peak demand", f"{number(demand, 1)} kW", when(month.get("peak_demand_start"))),
-        ("Load factor", number(month.get("load_factor"), 2), "mean over peak demand"),
+        ("Load factor", number(month.get("load_factor"), 2), "mean over peak"),
         (
             "Power factor",
             number(month.get("pf_energy_weighted"), 3),
-            f"of the energy; {at_peak} at peak",
+            f"{at_peak} at the peak",
         ),
         (
             "Peak current",

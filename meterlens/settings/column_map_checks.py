@@ -204,8 +204,6 @@ def power_factor(
             key="lagging_sign",
             hint="Both are in use: does lagging import read negative or positive?",
         )
-    if convention != "sign-is-lead-lag" and lagging_sign is not None:
-        raise fault('goes with pf_convention = "sign-is-lead-lag" only', key="lagging_sign")
     if assume is None and _needs_assume(convention, mapped):
         raise fault(
             f'is required: with pf_convention = "{convention}" and these columns nothing '

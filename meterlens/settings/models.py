@@ -153,8 +153,6 @@ class Service(Settings):
                 key="high_leg",
                 hint="It is the phase whose line-to-neutral voltage is about √3 the others.",
             )
-        if self.connection != "delta-4w" and self.high_leg is not None:
-            raise fault('goes with connection = "delta-4w" only', key="high_leg")
         for kind, rule in self.periods.items():
             _check_rule(kind, rule)
         return self

@@ -56,8 +56,6 @@ def _of_columns(columns: ColumnMap) -> Iterator[Unsupported]:
             yield (key,), "angle columns"
         if key.startswith("quadrant_"):
             yield (key,), "quadrant columns"
-        if key == "quality":
-            yield (key,), "status columns"
         if key == "service":
             yield (key,), "several services in one file"
     if columns.pf_convention in ("quadrant", "suffix"):

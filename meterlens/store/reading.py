@@ -217,6 +217,11 @@ class _Judge:
             values_clamped=clamped,
             notes=self.notes,
         )
+        if self.columns.quality is not None:
+            self.notes.append(
+                f'the status column "{self.columns.quality}" is not used by this version: '
+                "estimated readings are kept like any other"
+            )
         if self.columns.encoding is None and self.text.encoding not in ("utf-8", "utf-8-sig"):
             self.notes.append(f"read as {self.text.encoding}")
         return result

@@ -169,7 +169,6 @@ def test_service_without_readings_still_has_a_page(tmp_path: Path) -> None:
     assert specs(text) == {}
     assert set(specs(written[2].read_text(encoding="utf-8"))) == {
         "currents",
-        "periods",
         "coverage",
     }
 

@@ -50,7 +50,6 @@ NOT_YET = [
     (SITE + 'pf_a = "P"\npf_convention = "suffix"\n', 18, "service.columns.pf_convention"),
     (SITE + 'quadrant_a = "N"\n', 17, "service.columns.quadrant_a"),
     (SITE + 'service = "M"\n', 17, "service.columns.service"),
-    (SITE + 'estimated = ["E"]\nquality = "S"\n', 18, "service.columns.quality"),
     (SITE + "meter_elements = 2\n", 17, "service.columns.meter_elements"),
     (SITE + 'midnight = "ends-day"\n', 17, "service.columns.midnight"),
     (SITE + SUMS, 17, "sum"),

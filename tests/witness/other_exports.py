@@ -1,4 +1,4 @@
-"""Tidier exports that make the other choices: newest first, UTC and ISO, suffix and 24:00.
+"""Tidier exports that make the other choices: newest first, UTC and ISO, date and time apart.
 
 Each builds a site and returns the same `Export` as the awkward one.
 """
@@ -47,12 +47,13 @@ UTC_ISO = ExportMap(
     clock="utc",
     pf_convention="sign-is-power-flow",
 )
-SUFFIX = ExportMap(
+SPLIT = ExportMap(
     zone="Europe/Berlin",
     columns=_columns(("Date", "Time")),
     stamp="end",
     stamp_format="%Y-%m-%d %H:%M",
-    pf_convention="suffix",
+    pf_convention="sign-is-lead-lag",
+    lagging_sign="positive",
     delimiter="\t",
 )
 
@@ -118,15 +119,15 @@ def utc_iso(folder: Path) -> Export:
     return write_site(folder, export, head, body, site_toml(UTC_ISO, service))
 
 
-def suffix_24(folder: Path) -> Export:
-    """Date and time apart, midnight as 24:00, PF with a word, local end stamps, spring change.
+def split_24(folder: Path) -> Export:
+    """Date and time apart, midnight as 24:00, lagging PF positive, local end stamps, spring change.
 
     Two stamps stand in the hour that does not exist, and one value is no number.
     """
     service = Service(rating_a=400.0, demand_window_min=30)
-    zone = SUFFIX.zone
+    zone = SPLIT.zone
     truth = _loads(zone, "2025-03-28", "2025-04-03", lambda wall: wall.hour in (3, 4))
-    lines = body_of(truth, SUFFIX)
+    lines = body_of(truth, SPLIT)
     odd = local_start(zone, "2025-03-31", "08:00")
     cells = lines[odd].text.split("\t")
     cells[7] = "#REF!"
@@ -138,9 +139,9 @@ def suffix_24(folder: Path) -> Export:
             change,
             Line("\t".join(["2025-03-30", clock, *cells[2:7], "1.00", *cells[8:]]), "rejected"),
         )
-    head = ["\t".join(header for _, header, _ in SUFFIX.columns)]
-    export = Export(folder, folder / "exports" / "suffix.txt", SUFFIX, service, truth)
-    return write_site(folder, export, head, body, site_toml(SUFFIX, service))
+    head = ["\t".join(header for _, header, _ in SPLIT.columns)]
+    export = Export(folder, folder / "exports" / "split.txt", SPLIT, service, truth)
+    return write_site(folder, export, head, body, site_toml(SPLIT, service))
 
 
 def lone_repeated_stamp(folder: Path) -> Export:
@@ -182,5 +183,5 @@ BUILDERS: dict[str, Callable[[Path], Export]] = {
     "awkward": awkward_export.build,
     "newest-first": newest_first,
     "utc-iso": utc_iso,
-    "suffix-24": suffix_24,
+    "split-24": split_24,
 }

@@ -40,7 +40,7 @@
   function fit(layout, traces, width) {
     var margin = layout.margin;
     if (layout.showlegend) {
-      var more = 29 * (legendRows(traces, width - margin.l - margin.r) - 1);
+      var more = 25 * (legendRows(traces, width - margin.l - margin.r) - 1);
       layout.height += more;
       margin.b += more;
     }
