@@ -38,7 +38,7 @@ Side = Literal["below", "above", "outside"]
 class Limit:
     """A number with its source.
 
-    `value` is in `unit` (``"1"``: a fraction); None where it is the service's own.
+    `value` is in `unit` (often a fraction); None where it is the service's own.
     `status` says whether it was read (and `note` where, if not in the document itself),
     is common practice, is from memory, or is a setting of the site.
     """
@@ -54,32 +54,32 @@ class Limit:
 
 
 CONTINUOUS_FRACTION = Limit(
-    "continuous load over rating", 0.8, "1", "NFPA 70 (NEC)", "2023", "215.3, 230.42",
+    "continuous load over rating", 0.8, "fraction", "NFPA 70 (NEC)", "2023", "215.3, 230.42",
     "from memory", "125 % of continuous load, turned round; 1.0 where marked for 100 %",
 )  # fmt: skip
 OVERLOAD = Limit(
-    "phase current over rating", 1.0, "1", "rating of the service or its main breaker", "", "",
-    "common practice",
+    "phase current over rating", 1.0, "fraction", "rating of the service or its main breaker",
+    "", "", "common practice",
 )  # fmt: skip
 IMPOSSIBLE_PF = Limit(
-    "greatest magnitude of a power factor reading", 1.005, "1",
+    "greatest magnitude of a power factor reading", 1.005, "fraction",
     "half of the last digit of a power factor printed to two decimals", "", "", "common practice",
 )  # fmt: skip
 TARGET_PF = Limit(
-    "target power factor", 0.95, "1", "tariffs that bill reactive energy above tan φ = 0.33",
+    "target power factor", 0.95, "fraction", "tariffs that bill reactive energy above tan φ = 0.33",
     "", "", "common practice", "tan φ = 0.33 is a power factor of 0.9496",
 )  # fmt: skip
 CURRENT_IMBALANCE = Limit(
-    "current imbalance", 0.10, "1", "a utility's general terms of service", "",
+    "current imbalance", 0.10, "fraction", "a utility's general terms of service", "",
     "phases within 10 % of each other at or near maximum load", "common practice",
 )  # fmt: skip
 POWER_MISMATCH = Limit(
-    "metered power against V·I·PF, of S", 0.02, "1",
+    "metered power against V·I·PF, of S", 0.02, "fraction",
     "this program's choice: above the sum of a class 1 meter's and class 0.5 transformers' errors",
     "", "", "common practice",
 )  # fmt: skip
 _LEADING = Limit(
-    "leading power factor", 0.98, "1",
+    "leading power factor", 0.98, "fraction",
     "this program's choice: clearly leading, not hovering about unity", "", "", "common practice",
 )  # fmt: skip
 _VOLTAGE_BAND = Limit(
@@ -88,11 +88,11 @@ _VOLTAGE_BAND = Limit(
 )  # fmt: skip
 _VOLTAGE_IMBALANCE = {
     "en": Limit(
-        "voltage imbalance vuf", 0.02, "1", "EN 50160", "2010",
+        "voltage imbalance vuf", 0.02, "fraction", "EN 50160", "2010",
         "supply voltage unbalance: 95 % of the 10-minute values of each week", "from memory",
     ),
     "ansi": Limit(
-        "voltage imbalance lvur", 0.03, "1", "ANSI C84.1", "",
+        "voltage imbalance lvur", 0.03, "fraction", "ANSI C84.1", "",
         "informative annex on voltage unbalance: at the revenue meter, no load", "read",
         "read on a third party's page; the annex's letter differs by edition",
     ),

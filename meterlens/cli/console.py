@@ -16,14 +16,21 @@ import click
 from meterlens.settings import Site, load_site
 
 __all__ = [
+    "counted",
     "number",
+    "phase_labels",
     "print_json",
+    "print_rows",
     "print_table",
     "progress_over",
     "say",
     "site_options",
     "tell",
 ]
+
+
+_MOST_ROWS = 200
+_MOST_BLOCKS = 10
 
 
 def site_options(function: Callable[..., Any]) -> Callable[..., Any]:
@@ -107,18 +114,57 @@ def print_table(
         box=box.SIMPLE_HEAD,
         pad_edge=False,
         padding=(0, 1),
+        collapse_padding=True,
     )
     for place, heading in enumerate(headings):
         words = place in left or place in wrapped
         table.add_column(
             Text(heading),
             justify="left" if words else "right",
-            no_wrap=place not in wrapped,
+            # Numbers keep their line: words give way where the table is too wide.
+            no_wrap=not words,
             overflow="fold",
         )
     for row in rows:
         table.add_row(*(Text(_harmless(cell)) for cell in row))
     _console().print(table)
+
+
+def print_rows(names: Sequence[str], rows: Sequence[Sequence[Any]]) -> None:
+    """Rows of any query: a table where it fits, else a block of lines for each row."""
+    console = _console()
+    shown = [[_cell(x) for x in row] for row in rows[:_MOST_ROWS]]
+    widths = [max([len(name), *(len(row[k]) for row in shown)]) for k, name in enumerate(names)]
+    if sum(widths) + 2 * len(widths) <= console.width:
+        words = [
+            k for k in range(len(names)) if not all(isinstance(r[k], int | float) for r in rows)
+        ]
+        print_table(counted(len(rows), "row"), names, shown, left=words)
+    else:
+        shown = shown[:_MOST_BLOCKS]
+        say(counted(len(rows), "row"))
+        edge = max(map(len, names), default=0)
+        for row in shown:
+            say()
+            for name, cell in zip(names, row, strict=True):
+                say(_harmless(f"{name:<{edge}}  {cell}"))
+    if len(rows) > len(shown):
+        say(f"The first {len(shown)} rows; --json prints all.")
+
+
+def _cell(x: object) -> str:
+    if x is None:
+        return ""
+    if isinstance(x, float):
+        return f"{x:.7g}"
+    if isinstance(x, list):
+        return ", ".join(map(str, x))
+    return str(x)
+
+
+def counted(count: int, noun: str) -> str:
+    """A number with its noun, in the plural where it is not one."""
+    return f"{count:,} {noun}" if count == 1 else f"{count:,} {noun}s"
 
 
 def _harmless(cell: str) -> str:
@@ -152,6 +198,6 @@ def progress_over(what: str, total: int) -> Iterator[Callable[[str], None]]:
         yield advance
 
 
-def service_names(site: Site) -> dict[str, str]:
-    """Id → name."""
-    return {service.id: service.name for service in site.services}
+def phase_labels(site: Site) -> dict[str, tuple[str, str, str]]:
+    """Service id → what the site calls its phases a, b, c."""
+    return {service.id: service.phase_labels for service in site.services}

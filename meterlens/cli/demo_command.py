@@ -7,7 +7,7 @@ from pathlib import Path
 
 import click
 
-from meterlens.cli.console import print_json, say
+from meterlens.cli.console import phase_labels, print_json, say
 from meterlens.errors import RequestError
 from meterlens.settings import load_site
 
@@ -61,7 +61,7 @@ def demo(folder: Path, as_json: bool) -> None:
     store_commands.print_ingest(outcomes)
     study_tables.print_check(checked)
     study_tables.print_review(reviewed)
-    study_tables.print_periods(found)
+    study_tables.print_periods(found, phase_labels(site))
     say(f"Pages: open {pages[0]}")
     say(f"More:  meterlens periods --site {folder}")
 

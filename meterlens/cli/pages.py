@@ -45,9 +45,14 @@ def service_page(store: Store, service: Service) -> ServicePage:
     """All that one service's page shows."""
     site = store.site
     checked = check_services(store, service=service.id)["services"][0]
+    reviewed = review_months(store, service=service.id)
     months = [
-        {"month": month["month"]} | month["services"][0]
-        for month in review_months(store, service=service.id)["months"]
+        {
+            "month": month["month"],
+            "notes": [n for n in reviewed["notes"] if n.get("month") == month["month"]],
+        }
+        | month["services"][0]
+        for month in reviewed["months"]
     ]
     grades = store.rows("interval/angle_grade", service=service.id)
     first = grades[0] if grades else {"angle_grade": "nominal", "current_angle_grade": "equal"}

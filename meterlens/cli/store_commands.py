@@ -10,6 +10,7 @@ import click
 
 from meterlens.cli.console import (
     print_json,
+    print_rows,
     print_table,
     progress_over,
     say,
@@ -139,7 +140,7 @@ def print_ingest(outcomes: list[Any]) -> None:
     keys = ("rows_read", "rows_stored", "rows_replaced", "rows_duplicate", "rows_rejected")
     rows = [
         [
-            Path(outcome.file).name[-26:],
+            Path(outcome.file).name,
             *(f"{getattr(outcome, key):,}" for key in keys),
             f"{outcome.values_rejected:,}",
         ]
@@ -178,10 +179,7 @@ def query(site: Site, as_json: bool, question: str, settings: tuple[str, ...]) -
     if as_json:
         print_json({"columns": names, "rows": [list(row) for row in rows], "notes": []})
         return
-    shown = [["" if x is None else str(x) for x in row] for row in rows[:200]]
-    print_table(f"{len(rows):,} rows", names, shown, left=range(len(names)), wrapped=())
-    if len(rows) > len(shown):
-        say(f"The first {len(shown)} rows; --json prints all.")
+    print_rows(names, rows)
 
 
 def _parameter(text: str) -> tuple[str, str]:

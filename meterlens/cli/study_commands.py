@@ -8,7 +8,7 @@ from pathlib import Path
 import click
 
 from meterlens.cli import study_tables
-from meterlens.cli.console import print_json, say, site_options, tell
+from meterlens.cli.console import phase_labels, print_json, say, site_options, tell
 from meterlens.settings import PERIOD_KINDS, Site
 
 __all__ = ["check", "dashboard", "periods", "review"]
@@ -85,7 +85,7 @@ def periods(
     if as_json:
         print_json(result)
     else:
-        study_tables.print_periods(result)
+        study_tables.print_periods(result, phase_labels(site))
 
 
 @click.command()

@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import Any
 
-from meterlens.cli.console import number, print_table, say
+from meterlens.cli.console import counted, number, print_table, say
 
 __all__ = ["print_check", "print_findings", "print_periods", "print_review"]
 
@@ -57,15 +57,15 @@ def print_findings(findings: Sequence[dict[str, Any]], title: str = "What was fo
     print_table(title, ["", "service", "finding and next step"], rows, left=(0, 1), wrapped=(2,))
 
 
-def print_periods(result: dict[str, Any]) -> None:
-    """Periods in order of service and start."""
+def print_periods(result: dict[str, Any], labels: Mapping[str, Sequence[str]]) -> None:
+    """Periods in order of service and start, phases by the site's own labels."""
     rows = [
         [
             p["service"],
             p["kind"],
             _when(p["start"]),
             number(p["hours"], 2),
-            p["phase"] or "",
+            labels[p["service"]]["abc".index(p["phase"])] if p["phase"] else "",
             _measure(p, "worst"),
             _measure(p, "mean"),
         ]
@@ -75,8 +75,8 @@ def print_periods(result: dict[str, Any]) -> None:
         say("No periods that need attention.")
         return
     print_table(
-        f"{len(rows)} periods that need attention (site time)",
-        ["service", "kind", "from", "hours", "ph", "worst", "mean"],
+        f"{counted(len(rows), 'period')} to look at (site time)",
+        ["service", "kind", "from", "hours", "phase", "worst", "mean"],
         rows,
         left=(0, 1, 2, 4),
     )
@@ -116,7 +116,16 @@ def _print_energy(month: str, services: Sequence[dict[str, Any]]) -> None:
     ]
     print_table(
         f"{month}: energy and demand",
-        ["service", "kWh", "kvarh", "PF", "peak kW", "kVA", "at", "LF"],
+        [
+            "service",
+            "kWh",
+            "kvarh\nlagging",
+            "PF",
+            "peak\nkW",
+            "peak\nkVA",
+            "kW peak at",
+            "load\nfactor",
+        ],
         rows,
         left=(0, 6),
     )
@@ -138,17 +147,17 @@ def _print_quality(month: str, services: Sequence[dict[str, Any]]) -> None:
         for s in services
     ]
     print_table(
-        f"{month}: how it ran (p95: 95 % of the loaded time lies below)",
+        f"{month}: how it ran (imbalance: not exceeded 95 % of the loaded time)",
         [
             "service",
-            "data",
-            "peak A",
-            "of rating",
-            "low-PF h",
-            "lead h",
-            "I p95",
-            "V p95",
-            "V out h",
+            "record",
+            "peak\nA",
+            "of\nrating",
+            "low PF\nh",
+            "leading\nh",
+            "current\nimb.",
+            "voltage\nimb.",
+            "V out\nh",
         ],
         rows,
     )

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from typing import Any, Final
 
 from meterlens.report.facts import PHASES, ServiceFacts
-from meterlens.report.words import UNKNOWN, date_of, kind_words, number, percent, when
+from meterlens.report.words import UNKNOWN, kind_words, number, percent, when
 
 __all__ = [
     "Column",
@@ -24,6 +24,7 @@ _MOST_PERIODS: Final = 60
 _MOST_GAPS: Final = 60
 _SEVERITY: Final = {"urgent": 0, "act": 1, "look": 2, "note": 3}
 _PER_UNIT: Final = {"fraction", "", None}
+_COUNTED: Final = {"rows", "values", "intervals"}
 
 Entry = dict[str, Any]
 
@@ -64,6 +65,8 @@ def _amount(value: Any, unit: Any) -> str:
     """Write a magnitude with its unit; a bare fraction keeps three decimals."""
     if value is None:
         return UNKNOWN
+    if unit in _COUNTED:
+        return f"{number(value, 0)} {unit}"
     return number(value, 3) if unit in _PER_UNIT else f"{number(value)} {unit}"
 
 
@@ -228,7 +231,7 @@ def notes_of(months: list[Entry]) -> list[str]:
     notes: dict[str, None] = {}
     for month in months:
         for note in month.get("notes") or []:
-            notes.setdefault(f"{note.get('key')}: {note.get('reason')}")
+            notes.setdefault(f"{month.get('month')}, {note.get('key')}: {note.get('reason')}")
     return list(notes)
 
 
@@ -236,8 +239,8 @@ def record_words(check: Entry) -> list[tuple[str, str]]:
     """Return the facts of the record itself: term and value."""
     interval = check.get("interval_min")
     return [
-        ("First interval", date_of(check.get("first"))),
-        ("Last interval", date_of(check.get("last"))),
+        ("Record from", when(check.get("first"))),
+        ("Record to", when(check.get("last"))),
         ("Interval", UNKNOWN if interval is None else f"{interval:g} min"),
         ("Completeness", percent(check.get("completeness"))),
     ]

@@ -66,7 +66,7 @@ def _finding(
 ) -> Finding:
     worst = _worst(kind, group)
     hours = sum(p["hours"] for p in group)
-    often = "once" if len(group) == 1 else f"in {len(group)} periods"
+    often = "in one period" if len(group) == 1 else f"in {len(group)} periods"
     when = worst["start"][:16].replace("T", " ")
     text = _sentence(service, kind, worst, f"{hours:.4g} h {often}", when, group)
     confidence: Confidence = "high"

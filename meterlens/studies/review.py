@@ -74,7 +74,10 @@ def review_months(
                 f"there are no readings in {month}", hint="Months: " + ", ".join(known) + "."
             )
     services = [store.site.service(service)] if service else list(store.site.services)
-    notes: list[dict[str, Any]] = []
+    notes: list[dict[str, Any]] = [
+        {"key": "cost.total", "reason": "this version applies no tariff"},
+        {"key": "change_vs_previous_month", "reason": "this version does not compare months"},
+    ]
     by_month: dict[str, list[dict[str, Any]]] = {}
     for one in services:
         for entry in _service_months(store, one, set(months), notes):
@@ -178,10 +181,7 @@ def _unknown(
     service: Service, month: str, entry: dict[str, Any], row: dict[str, Any]
 ) -> list[dict[str, Any]]:
     """Why a figure of the month is null, and what the month leans on."""
-    reasons: dict[str, str] = {
-        "cost.total": "no tariff is applied in this review",
-        "change_vs_previous_month": "months are not compared in this review",
-    }
+    reasons: dict[str, str] = {}
     no_q = "the record has no total reactive power (Q) in this month"
     no_p = "the record has no total power (P) in this month"
     for key in (*_NEEDS_P, *_NEEDS_Q):
@@ -232,14 +232,14 @@ def _findings(
     if missing > 1e-9:
         findings.append(
             Finding(
-                kind="gap",
+                kind="incomplete-month",
                 service=service.id,
                 phase=None,
                 start=start,
                 end=end,
                 severity="look" if missing >= 0.01 else "note",
                 magnitude=missing,
-                unit="1",
+                unit="fraction",
                 confidence="high",
                 text=f"{missing:.2%} of the month has no total power; sums cover the rest only.",
                 next_step="Run meterlens check to see where, and export the missing days again.",
@@ -264,7 +264,7 @@ def _near_rating(service: Service, entry: dict[str, Any], start: str, end: str) 
             end=end,
             severity="look",
             magnitude=share,
-            unit="1",
+            unit="fraction",
             confidence="high",
             text=f"The highest interval current is {share:.1%} of the {service.rating_a:g} A "
             f"rating; load that lasts three hours or more should stay under "

@@ -80,9 +80,13 @@ def test_the_floor_blanks_ratios_and_keeps_power(readings: IntervalReadings, flo
     assert readings.i is not None
     assert readings.pf is not None
     assert readings.v is not None
-    # Only with every PF and voltage printed: a blank PF under the floor is another rule.
+    assert readings.lead_lag is not None
+    # Only with every power known: a blank PF under the floor is another rule.
     readings = replace(
-        readings, pf=np.nan_to_num(readings.pf, nan=0.5), v=np.nan_to_num(readings.v, nan=230.0)
+        readings,
+        v=np.nan_to_num(readings.v, nan=230.0),
+        pf=np.nan_to_num(readings.pf, nan=0.5),
+        lead_lag=np.nan_to_num(readings.lead_lag, nan=1.0),
     )
     without = derive(readings, replace(SERVICE, floor_a=0.0))
     under = derive(readings, replace(SERVICE, floor_a=floor))

@@ -37,7 +37,7 @@ def every_limit() -> list[Limit]:
 def test_every_limit_says_where_it_is_from(limit: Limit) -> None:
     assert limit.name
     assert limit.document
-    assert limit.unit in ("1", "pu")
+    assert limit.unit in ("fraction", "pu")
     assert limit.status in ("read", "common practice", "from memory")
     with pytest.raises(dataclasses.FrozenInstanceError):
         limit.value = 0.0  # type: ignore[misc]

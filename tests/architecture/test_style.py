@@ -1,0 +1,124 @@
+"""Sizes, names and doors of the code: what a reviewer would otherwise repeat each time."""
+
+from __future__ import annotations
+
+import ast
+from collections.abc import Iterator
+from importlib import import_module
+from pathlib import Path
+
+import pytest
+
+ROOT = Path(__file__).resolve().parents[2]
+FILES = sorted((ROOT / "meterlens").rglob("*.py"))
+LONGEST_FILE, LONGEST_FUNCTION = 300, 60
+#: Words that say nothing of what a thing is.
+BANNED = {"data", "info", "utils", "helper", "manager", "process", "handle"}
+
+by_file = pytest.mark.parametrize(
+    "file", FILES, ids=[f.relative_to(ROOT).as_posix() for f in FILES]
+)
+
+
+def functions(tree: ast.AST) -> Iterator[ast.FunctionDef | ast.AsyncFunctionDef]:
+    for node in ast.walk(tree):
+        if isinstance(node, ast.FunctionDef | ast.AsyncFunctionDef):
+            yield node
+
+
+def given_names(tree: ast.AST) -> Iterator[tuple[str, int]]:
+    """Names that the code gives: what it merely uses of others is theirs."""
+    for node in ast.walk(tree):
+        line = getattr(node, "lineno", 0)
+        if isinstance(node, ast.FunctionDef | ast.AsyncFunctionDef | ast.ClassDef):
+            yield node.name, line
+        elif isinstance(node, ast.arg):
+            yield node.arg, line
+        elif isinstance(node, ast.Name | ast.Attribute) and isinstance(node.ctx, ast.Store):
+            yield node.id if isinstance(node, ast.Name) else node.attr, line
+        elif isinstance(node, ast.ExceptHandler) and node.name:
+            yield node.name, line
+        elif isinstance(node, ast.alias):
+            yield node.asname or node.name, line
+
+
+@by_file
+def test_files_stay_short(file: Path) -> None:
+    lines = len(file.read_text(encoding="utf-8").splitlines())
+    assert lines <= LONGEST_FILE, f"{lines} lines: split it by topic"
+
+
+@by_file
+def test_functions_stay_short(file: Path) -> None:
+    tree = ast.parse(file.read_text(encoding="utf-8"))
+    long = {
+        f.name: f.end_lineno - f.lineno + 1
+        for f in functions(tree)
+        if f.end_lineno and f.end_lineno - f.lineno + 1 > LONGEST_FUNCTION
+    }
+    assert not long
+
+
+@by_file
+def test_names_say_what_things_are(file: Path) -> None:
+    tree = ast.parse(file.read_text(encoding="utf-8"))
+    empty = [f"{name} (line {line})" for name, line in given_names(tree) if name.lower() in BANNED]
+    assert not empty
+    assert file.stem not in BANNED
+    assert file.parent.name not in BANNED
+
+
+@by_file
+def test_modules_say_what_they_are_for(file: Path) -> None:
+    tree = ast.parse(file.read_text(encoding="utf-8"))
+    if tree.body:
+        assert ast.get_docstring(tree), "no module docstring"
+
+
+def sql_doors(tree: ast.AST) -> Iterator[ast.expr]:
+    """The texts handed to DuckDB."""
+    for node in ast.walk(tree):
+        if (
+            isinstance(node, ast.Call)
+            and isinstance(node.func, ast.Attribute)
+            and node.func.attr in ("execute", "executemany", "sql", "query")
+            and node.args
+        ):
+            yield node.args[0]
+
+
+@by_file
+def test_sql_is_never_built_of_strings(file: Path) -> None:
+    tree = ast.parse(file.read_text(encoding="utf-8"))
+    texts = list(sql_doors(tree))
+    built = [
+        f"line {text.lineno}"
+        for text in texts
+        if isinstance(text, ast.JoinedStr | ast.BinOp)
+        or (isinstance(text, ast.Call) and isinstance(text.func, ast.Attribute))
+    ]
+    assert not built
+    if file.parent.name != "store":
+        assert not texts, "only the store speaks SQL"
+
+
+KERNEL = sorted((ROOT / "meterlens" / "electrical").glob("[a-z]*.py"))
+
+
+@pytest.mark.parametrize("file", KERNEL, ids=[f.stem for f in KERNEL])
+def test_kernel_functions_are_documented_equations(file: Path) -> None:
+    module = import_module(f"meterlens.electrical.{file.stem}")
+    wanting = []
+    for node in ast.parse(file.read_text(encoding="utf-8")).body:
+        if not isinstance(node, ast.FunctionDef) or node.name not in module.__all__:
+            continue
+        text = ast.get_docstring(node) or ""
+        sections = ["Returns\n-------"]
+        if node.args.args or node.args.kwonlyargs:
+            sections.append("Parameters\n----------")
+        wanting += [f"{node.name}: {s.split()[0]}" for s in sections if s not in text]
+        if "References\n----------" not in text and "Notes\n-----" not in text:
+            wanting.append(f"{node.name}: References or Notes")
+        named = [a.arg for a in (*node.args.args, *node.args.kwonlyargs)]
+        wanting += [f"{node.name}: {name} is not described" for name in named if name not in text]
+    assert not wanting
