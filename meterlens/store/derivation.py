@@ -27,7 +27,6 @@ from meterlens.store.columns import (
     DERIVED_FRACTIONS,
     DERIVED_PHASES,
     DERIVED_TOTALS,
-    READING_COLUMNS,
     WATTS_PER_KILOWATT,
 )
 from meterlens.store.merge import UNCONTESTED, Rows
@@ -111,14 +110,12 @@ def derived_batches(rows: Rows, service: Service, zone: ZoneTable) -> pa.RecordB
         Whole row groups; the kernel runs ahead on its own threads while the reader's
         consumer writes.
     """
-    seen = ~np.all(np.isnan(rows.values), axis=1) if rows.values.size else []
-    present = tuple(n for n, has in zip(READING_COLUMNS, seen, strict=False) if has)
-    schema = table_schema(present)
+    schema = table_schema(rows.names)
     constants = service_constants(service)
 
     def batch(first: int) -> pa.RecordBatch:
-        part = rows.take(np.arange(first, min(first + ROW_GROUP, len(rows.start))))
-        return _record_batch(part, service.id, present, schema, constants, zone)
+        part = rows.take(slice(first, first + ROW_GROUP))
+        return _record_batch(part, service.id, schema, constants, zone)
 
     def batches() -> Iterator[pa.RecordBatch]:
         firsts = list(range(0, len(rows.start), ROW_GROUP))
@@ -136,7 +133,6 @@ def derived_batches(rows: Rows, service: Service, zone: ZoneTable) -> pa.RecordB
 def _record_batch(
     rows: Rows,
     service_id: str,
-    present: tuple[str, ...],
     schema: pa.Schema,
     constants: ServiceConstants,
     zone: ZoneTable,
@@ -153,11 +149,11 @@ def _record_batch(
         "line": pa.array(rows.line.astype(np.int32)),
         "given": pa.array(rows.given, mask=rows.given == UNCONTESTED),
     }
-    column = dict(zip(READING_COLUMNS, rows.values, strict=True))
-    for name in present:
-        arrays[name] = _array(column[name])
+    column = dict(zip(rows.names, rows.values, strict=True))
+    for name, x in column.items():
+        arrays[name] = _array(x)
     parts = [
-        derive_intervals(_kernel_readings(column, present, slice(k, k + KERNEL_BATCH)), constants)
+        derive_intervals(_kernel_readings(column, count, slice(k, k + KERNEL_BATCH)), constants)
         for k in range(0, count, KERNEL_BATCH)
     ]
     arrays |= _derived_arrays(parts, count)
@@ -169,21 +165,21 @@ def _array(x: FloatArray) -> pa.Array:
     return pa.array(x, mask=np.isnan(x))
 
 
-def _kernel_readings(
-    column: dict[str, FloatArray], present: tuple[str, ...], part: slice
-) -> IntervalReadings:
+def _kernel_readings(column: dict[str, FloatArray], count: int, part: slice) -> IntervalReadings:
     """Readings in SI units, None where no phase has the column."""
+    missing = np.full(len(range(*part.indices(count))), np.nan)
 
     def phases(pattern: str, names: str, factor: float = 1.0) -> FloatArray | None:
         wanted = [pattern.format(name) for name in names.split()]
-        if not any(name in present for name in wanted):
+        if not any(name in column for name in wanted):
             return None
-        stacked = np.stack([column[name][part] for name in wanted])
+        stacked = np.stack([column[n][part] if n in column else missing for n in wanted])
         return stacked if factor == 1.0 else stacked * factor
 
     def total(name: str, factor: float = 1.0) -> FloatArray | None:
-        return column[name][part] * factor if name in present else None
+        return column[name][part] * factor if name in column else None
 
+    total_sense = _lead_lag(column, part)
     readings = IntervalReadings(
         v=phases("v_{}", "a b c"),
         i=phases("i_{}", "a b c"),
@@ -192,7 +188,7 @@ def _kernel_readings(
         q=phases("q_metered_{}_kvar", "a b c", WATTS_PER_KILOWATT),
         s=phases("s_metered_{}_kva", "a b c", WATTS_PER_KILOWATT),
         v_line=phases("v_{}", "ab bc ca"),
-        lead_lag=_lead_lag(column, present, part),
+        lead_lag=phases("lead_lag_{}", "a b c") if total_sense is None else total_sense,
         pf_total=total("pf_exported_total"),
         p_total=total("p_metered_kw", WATTS_PER_KILOWATT),
         q_total=total("q_metered_kvar", WATTS_PER_KILOWATT),
@@ -200,19 +196,15 @@ def _kernel_readings(
     )
     if all(getattr(readings, f.name) is None for f in fields(readings)):
         # Rows with a metered neutral alone still are intervals.
-        return IntervalReadings(v=np.stack([column[f"v_{k}"][part] for k in _PHASES]))
+        return IntervalReadings(v=np.stack([missing] * len(_PHASES)))
     return readings
 
 
-def _lead_lag(
-    column: dict[str, FloatArray], present: tuple[str, ...], part: slice
-) -> FloatArray | None:
-    """Lead or lag of each phase; one word for the total stands for all three."""
-    if any(f"lead_lag_{k}" in present for k in _PHASES):
-        return np.stack([column[f"lead_lag_{k}"][part] for k in _PHASES])
-    if "lead_lag_total" in present:
-        return np.repeat(column["lead_lag_total"][None, part], 3, axis=0)
-    return None
+def _lead_lag(column: dict[str, FloatArray], part: slice) -> FloatArray | None:
+    """One word for the total stands for all three phases."""
+    if "lead_lag_total" not in column:
+        return None
+    return np.repeat(column["lead_lag_total"][None, part], 3, axis=0)
 
 
 def _derived_arrays(parts: list[IntervalQuantities], count: int) -> dict[str, pa.Array]:

@@ -10,9 +10,8 @@ import numpy as np
 
 from meterlens.settings import Service
 from meterlens.store import derivation
-from meterlens.store.columns import READING_COLUMNS
 from meterlens.store.database import Store
-from meterlens.store.merge import Rows, Superseded, given_bits, merge_rows
+from meterlens.store.merge import Rows, Superseded, column_bits, given_bits, merge_rows
 from meterlens.store.tables import stored_rows, superseded_table, written_rows
 from meterlens.store.zones import ZoneTable
 
@@ -51,12 +50,11 @@ def _fold_anew(
     left = versions.take(versions.file_id != file_id)
     if len(left.start) == 0:
         return
-    bits = np.where(left.given < 0, given_bits(left.values), left.given)
-    weights = np.left_shift(np.int64(1), np.arange(len(left.values), dtype=np.int64))
-    own = (bits & weights[:, None]) != 0
+    bits = np.where(left.given < 0, given_bits(left), left.given)
+    own = (bits & column_bits(left.names)) != 0
     left.values = np.where(own, left.values, np.nan)
     left.given[:] = -1
-    merge = merge_rows(Rows.empty(len(READING_COLUMNS)), left)
+    merge = merge_rows(Rows.empty(), left)
     _keep(store, service, merge.superseded, zone)
     batches = derivation.derived_batches(merge.written, service, zone)
     store.con.register("derived_row", batches)

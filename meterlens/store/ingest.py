@@ -11,7 +11,6 @@ from typing import Any
 import numpy as np
 import pyarrow as pa
 
-from meterlens.electrical.conventions import FloatArray
 from meterlens.settings import Service, map_digest
 from meterlens.store import derivation
 from meterlens.store.columns import READING_COLUMNS
@@ -155,23 +154,22 @@ def _store_rows(
 
 def _incoming(rows: ExportRows, file_id: int) -> Rows:
     count = len(rows.start_utc)
-    values: FloatArray = np.full((len(READING_COLUMNS), count), np.nan)
-    for place, name in enumerate(READING_COLUMNS):
-        if name in rows.values:
-            values[place] = rows.values[name]
+    names = tuple(name for name in READING_COLUMNS if name in rows.values)
+    values = np.array([rows.values[name] for name in names])
     return Rows(
         start=rows.start_utc,
         interval_min=np.full(count, rows.interval_min, dtype=np.int64),
         file_id=np.full(count, file_id, dtype=np.int64),
         line=rows.line,
         given=np.full(count, UNCONTESTED, dtype=np.int64),
+        names=names,
         values=values,
     )
 
 
 def _stored_near(store: Store, service: Service, incoming: Rows) -> Rows:
     if len(incoming.start) == 0:
-        return Rows.empty(len(READING_COLUMNS))
+        return Rows.empty()
     reach = _LONGEST_MIN * MICROSECONDS_PER_MINUTE
     return stored_rows(
         store,

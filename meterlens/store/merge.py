@@ -14,9 +14,19 @@ import numpy as np
 import numpy.typing as npt
 
 from meterlens.electrical.conventions import FloatArray
+from meterlens.store.columns import READING_COLUMNS
 from meterlens.store.zones import MICROSECONDS_PER_MINUTE, IntArray
 
-__all__ = ["UNCONTESTED", "Merge", "Outcome", "Rows", "Superseded", "given_bits", "merge_rows"]
+__all__ = [
+    "UNCONTESTED",
+    "Merge",
+    "Outcome",
+    "Rows",
+    "Superseded",
+    "column_bits",
+    "given_bits",
+    "merge_rows",
+]
 
 #: `given` of a row that no other line has written to: all its values are its own.
 UNCONTESTED = -1
@@ -42,6 +52,8 @@ class Rows:
     interval_min, file_id, line, given : IntArray
         Shape (n,). `given` has a bit for each value that the line itself gave, or
         `UNCONTESTED`.
+    names : tuple of str
+        The k reading columns that have values at all, in the order of the table.
     values : FloatArray
         Shape (k, n): one row a reading column, NaN where missing.
     """
@@ -51,35 +63,50 @@ class Rows:
     file_id: IntArray
     line: IntArray
     given: IntArray
+    names: tuple[str, ...]
     values: FloatArray
 
-    def take(self, where: npt.NDArray[np.bool_] | IntArray) -> Rows:
-        """The chosen rows, copied."""
+    def take(self, where: npt.NDArray[np.bool_] | IntArray | slice) -> Rows:
+        """The chosen rows."""
         return Rows(
             self.start[where],
             self.interval_min[where],
             self.file_id[where],
             self.line[where],
             self.given[where],
+            self.names,
             self.values[:, where],
         )
 
-    @staticmethod
-    def empty(width: int) -> Rows:
-        """No rows of so many columns."""
-        none = np.empty(0, dtype=np.int64)
-        return Rows(none, none, none, none, none, np.empty((width, 0)))
+    def with_columns(self, names: tuple[str, ...]) -> Rows:
+        """The same rows with exactly these columns; those not there are missing."""
+        if names == self.names:
+            return self
+        values = np.full((len(names), len(self.start)), np.nan)
+        for place, name in enumerate(names):
+            if name in self.names:
+                values[place] = self.values[self.names.index(name)]
+        return Rows(
+            self.start, self.interval_min, self.file_id, self.line, self.given, names, values
+        )
 
     @staticmethod
-    def joined(parts: list[Rows], width: int) -> Rows:
-        """One after another."""
-        parts = parts or [Rows.empty(width)]
+    def empty(names: tuple[str, ...] = ()) -> Rows:
+        """No rows of these columns."""
+        none = np.empty(0, dtype=np.int64)
+        return Rows(none, none, none, none, none, names, np.empty((len(names), 0)))
+
+    @staticmethod
+    def joined(parts: list[Rows], names: tuple[str, ...]) -> Rows:
+        """One after another, all of the same columns."""
+        parts = parts or [Rows.empty(names)]
         return Rows(
             np.concatenate([p.start for p in parts]),
             np.concatenate([p.interval_min for p in parts]),
             np.concatenate([p.file_id for p in parts]),
             np.concatenate([p.line for p in parts]),
             np.concatenate([p.given for p in parts]),
+            names,
             np.concatenate([p.values for p in parts], axis=1),
         )
 
@@ -115,10 +142,15 @@ class Merge:
     superseded: Superseded
 
 
-def given_bits(values: FloatArray) -> IntArray:
+def column_bits(names: tuple[str, ...]) -> IntArray:
+    """The bit of each column in `given`; shape (k, 1)."""
+    places = [READING_COLUMNS.index(name) for name in names]
+    return np.left_shift(np.int64(1), np.array(places, dtype=np.int64))[:, None]
+
+
+def given_bits(rows: Rows) -> IntArray:
     """A bit for each column that has a value; shape (n,)."""
-    weights = np.left_shift(np.int64(1), np.arange(len(values), dtype=np.int64))
-    return np.asarray(((~np.isnan(values)) * weights[:, None]).sum(axis=0))
+    return np.asarray((~np.isnan(rows.values) * column_bits(rows.names)).sum(axis=0))
 
 
 def merge_rows(stored: Rows, incoming: Rows) -> Merge:
@@ -141,6 +173,10 @@ def merge_rows(stored: Rows, incoming: Rows) -> Merge:
     round, so that a file without repeats is one round of whole-array work.
     """
     outcome = np.full(len(incoming.start), Outcome.STORED, dtype=np.int8)
+    if len(stored.start) == 0 and (orderly := _all_new(incoming)) is not None:
+        return Merge(outcome, orderly, np.empty(0, dtype=np.int64), _joined([], incoming.names))
+    names = tuple(n for n in READING_COLUMNS if n in incoming.names or n in stored.names)
+    stored, incoming = stored.with_columns(names), incoming.with_columns(names)
     rejected = _overlapping(stored, incoming)
     outcome[rejected] = Outcome.REJECTED
     taken = np.flatnonzero(~rejected)
@@ -163,22 +199,37 @@ def merge_rows(stored: Rows, incoming: Rows) -> Merge:
         outcome=outcome,
         written=state.take(dirty),
         rewritten_start=slots[dirty & was_stored],
-        superseded=_joined(versions, len(incoming.values)),
+        superseded=_joined(versions, names),
     )
+
+
+def _all_new(incoming: Rows) -> Rows | None:
+    """The rows in order of start, where none repeats or overlaps another; else None.
+
+    Nearly every export read for the first time is such a file, forward or backward.
+    """
+    if len(incoming.start) == 0:
+        return incoming
+    if len(incoming.start) > 1 and incoming.start[1] < incoming.start[0]:
+        incoming = incoming.take(slice(None, None, -1))
+    steps = np.diff(incoming.start)
+    apart = (steps >= incoming.interval_min[:-1] * MICROSECONDS_PER_MINUTE).all()
+    return incoming if apart else None
 
 
 def _initial_state(
     stored: Rows, incoming: Rows, slots: IntArray
 ) -> tuple[Rows, npt.NDArray[np.bool_]]:
     """One place for every start of the file, filled with what the store has."""
-    count, width = len(slots), len(incoming.values)
+    count, names = len(slots), incoming.names
     state = Rows(
         start=slots.copy(),
         interval_min=np.zeros(count, dtype=np.int64),
         file_id=np.zeros(count, dtype=np.int64),
         line=np.zeros(count, dtype=np.int64),
         given=np.full(count, UNCONTESTED, dtype=np.int64),
-        values=np.full((width, count), np.nan),
+        names=names,
+        values=np.full((len(names), count), np.nan),
     )
     occupied = np.zeros(count, dtype=bool)
     if len(stored.start) and count:
@@ -226,17 +277,17 @@ def _meet(
     versions.append(
         Superseded(old.take(touched), rows.file_id[touched], rows.line[touched], changes[touched])
     )
-    rows.given = given_bits(rows.values)
+    rows.given = given_bits(rows)
     rows.values = np.where(has_new, rows.values, old.values)
     _assign(state, slot[touched], rows.take(touched))
     dirty[slot[touched]] = True
     return result
 
 
-def _joined(versions: list[Superseded], width: int) -> Superseded:
+def _joined(versions: list[Superseded], names: tuple[str, ...]) -> Superseded:
     none = np.empty(0, dtype=np.int64)
     return Superseded(
-        Rows.joined([v.rows for v in versions], width),
+        Rows.joined([v.rows for v in versions], names),
         np.concatenate([none, *(v.by_file_id for v in versions)]),
         np.concatenate([none, *(v.by_line for v in versions)]),
         np.concatenate([none.astype(bool), *(v.replaced for v in versions)]),

@@ -196,22 +196,23 @@ class _Judge:
         )
         self._reject_stamps(position[keep], stamps)
         usable = stamps.start_utc != timestamps.NOT_A_TIME
+        chosen = np.flatnonzero(keep)[usable]
         values = {
-            key: _floats(table[key])[keep][usable] * self.columns.scale.get(key, 1.0)
+            key: _floats(table[key], chosen, self.columns.scale.get(key, 1.0))
             for key in self.layout.value_fields
         }
-        where = position[keep][usable]
+        where = position[chosen]
         value_rejects, clamped = self._impossible_values(values, where)
-        numbers = [x for key, x in values.items() if not key.startswith("lead_lag_")]
-        measured = ~np.all(np.isnan(numbers), axis=0)
+        measured = _has_measurement(values)
         self._add_rejects(where[~measured], _EMPTY)
+        kept: slice | npt.NDArray[np.bool_] = slice(None) if measured.all() else measured
         result = ExportRows(
             text=self.text,
             interval_min=interval,
             rows_read=int(np.count_nonzero(present)) - blank,
-            line=self._lines(where[measured]),
-            start_utc=stamps.start_utc[usable][measured],
-            values={STORE_COLUMN[key]: x[measured] for key, x in values.items()},
+            line=self._lines(where[kept]),
+            start_utc=stamps.start_utc[usable][kept],
+            values={STORE_COLUMN[key]: x[kept] for key, x in values.items()},
             row_rejects=sorted(self.row_rejects, key=lambda r: r.line),
             value_rejects=value_rejects,
             values_clamped=clamped,
@@ -366,6 +367,21 @@ def _integers(column: pa.ChunkedArray) -> IntArray:
     return np.asarray(column.fill_null(timestamps.NOT_A_TIME).to_numpy())
 
 
-def _floats(column: pa.ChunkedArray) -> FloatArray:
-    """Doubles with NaN for null, as an array of its own."""
-    return np.array(column.to_numpy(), dtype=np.float64)
+def _floats(column: pa.ChunkedArray, chosen: IntArray, factor: float) -> FloatArray:
+    """Chosen doubles with NaN for null, scaled, as an array of its own."""
+    x = column.to_numpy()
+    x = x[chosen] if len(chosen) < len(x) else np.array(x, dtype=np.float64)
+    if factor != 1.0:
+        x *= factor
+    return np.asarray(x)
+
+
+def _has_measurement(values: dict[str, FloatArray]) -> npt.NDArray[np.bool_]:
+    """True where a row has any number; a word for lead or lag is none."""
+    numbers = [x for key, x in values.items() if not key.startswith("lead_lag_")]
+    found = ~np.isnan(numbers[0])
+    for x in numbers[1:]:
+        if found.all():
+            break
+        found |= ~np.isnan(x)
+    return found

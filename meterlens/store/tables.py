@@ -28,8 +28,9 @@ def rows_from_table(table: pa.Table) -> Rows:
     def whole(name: str) -> IntArray:
         return np.asarray(table[name].to_numpy(), dtype=np.int64)
 
-    values = np.empty((len(READING_COLUMNS), table.num_rows))
-    for place, name in enumerate(READING_COLUMNS):
+    names = tuple(n for n in READING_COLUMNS if table[n].null_count < table.num_rows)
+    values = np.empty((len(names), table.num_rows))
+    for place, name in enumerate(names):
         values[place] = table[name].to_numpy()
     return Rows(
         start=whole("start_us"),
@@ -37,6 +38,7 @@ def rows_from_table(table: pa.Table) -> Rows:
         file_id=whole("file_id"),
         line=whole("line"),
         given=np.asarray(table["given"].fill_null(UNCONTESTED).to_numpy(), dtype=np.int64),
+        names=names,
         values=values,
     )
 
@@ -56,7 +58,7 @@ def superseded_table(superseded: Superseded, service_id: str, zone: ZoneTable) -
         "by_line": pa.array(superseded.by_line.astype(np.int32)),
         "replaced": pa.array(superseded.replaced),
     }
-    for name, x in zip(READING_COLUMNS, rows.values, strict=True):
+    for name, x in zip(rows.names, rows.values, strict=True):
         columns[name] = pa.array(x, mask=np.isnan(x))
     return pa.table(columns)
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import fields, replace
 
 import numpy as np
@@ -24,10 +25,7 @@ def test_a_record_may_be_cut_into_batches_anywhere(
     whole = derive(readings)
     n = readings.count
     edges = sorted({0, n, *(c for c in cuts if c < n)})
-    parts = [
-        derive(cut(readings, slice(first, last)))
-        for first, last in zip(edges, edges[1:], strict=False)
-    ]
+    parts = [derive(cut(readings, slice(first, last))) for first, last in itertools.pairwise(edges)]
     for name in EVERY:
         joined = np.concatenate([getattr(part, name) for part in parts], axis=-1)
         identical(getattr(whole, name), joined, name)

@@ -32,13 +32,15 @@ def test_delta_and_wye_are_alike_between_every_two_terminals(wye: np.ndarray) ->
         direct, around = delta[k], delta[(k + 1) % 3] + delta[(k + 2) % 3]
         between = wye[k] + wye[(k + 1) % 3]  # the third terminal left open
         scale = np.abs(wye).sum(axis=0) ** 2
-        assert np.all(np.abs(direct * around - between * (direct + around)) <= 1e-9 * (
-            scale + np.abs(direct * around)
-        ))
+        assert np.all(
+            np.abs(direct * around - between * (direct + around))
+            <= 1e-9 * (scale + np.abs(direct * around))
+        )
 
 
-@given(hnp.arrays(np.complex128, 4, elements=st.complex_numbers(min_magnitude=1e-3,
-                                                                max_magnitude=1e3)))
+@given(
+    hnp.arrays(np.complex128, 4, elements=st.complex_numbers(min_magnitude=1e-3, max_magnitude=1e3))
+)
 def test_equal_elements_are_three_times_larger_in_delta(z: np.ndarray) -> None:
     same = np.repeat(z[None, :], 3, axis=0)
     np.testing.assert_allclose(impedance.delta_from_wye(same), 3 * same, rtol=1e-12)

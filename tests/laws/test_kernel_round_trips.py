@@ -54,11 +54,9 @@ def words(phi: Floats) -> Floats:
 
 @UNITS
 @pytest.mark.parametrize(("assumed", "quadrant"), [(1, 1), (-1, 4)])
-@given(choice=st.sampled_from([0]), pick=st.tuples(loads((1,)), loads((4,))))
-def test_unsigned(
-    choice: int, pick: tuple[tuple[Floats, ...], ...], unity: float, assumed: int, quadrant: int
-) -> None:
-    case = pick[choice if quadrant == 1 else 1]
+@given(drawn=st.data())
+def test_unsigned(drawn: st.DataObject, unity: float, assumed: int, quadrant: int) -> None:
+    case = drawn.draw(loads((quadrant,)))
     sense = PowerFactorSense("unsigned", assumed, per_unit=unity)
     out = comes_back(case, np.cos(case[2]), sense)
     assert np.all(out.flags & np.uint16(Flag.LEAD_LAG_ASSUMED))

@@ -67,7 +67,7 @@ def test_name_is_lower_case_words(name: str) -> None:
 @by_name
 def test_header_says_what_it_is(name: str) -> None:
     lines = written(name).splitlines()
-    header = [line for line in lines[: next(i for i, x in enumerate(lines) if x[:2] != "--")]]
+    header = lines[: next(i for i, x in enumerate(lines) if x[:2] != "--")]
     kinds = [re.match(r"-- (args|row): \S", line) for line in header]
     marks = [kind[1] for kind in kinds if kind]
     assert marks == ["args", "row"], "after the sentence come args and row, in this order"

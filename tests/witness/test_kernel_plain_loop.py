@@ -96,7 +96,7 @@ def plain_interval(
     current = [
         cmath.rect(i[k], k * lag - math.atan2(phases[k]["q"], phases[k]["p"])) for k in range(3)
     ]
-    v_0, v_1, v_2 = fortescue(voltage, sequence)
+    _, v_1, v_2 = fortescue(voltage, sequence)
     i_0, i_1, i_2 = fortescue(current, sequence)
     row["i_neutral"] = abs(sum(current))
     sides = [abs(voltage[k] - voltage[(k + 1) % 3]) for k in range(3)]

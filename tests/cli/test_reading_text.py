@@ -1,0 +1,229 @@
+"""Small exports written by hand: delimiters, number spellings, encodings, line ends, quotes."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+from small_site import VALUES, SmallSite, counts, table
+
+NAMES = ["Time", "Va", "Vb", "Vc", "Ia", "Ib", "Ic"]
+STAMPS = [f"2026-10-01T00:{minute:02d}" for minute in (0, 15, 30, 45)]
+NUMBERS = [[f"{230 + n}.5", "231.25", "232", f"{10 + n}.125", "11.5", "0.75"] for n in range(4)]
+ROWS = [NAMES, *([stamp, *row] for stamp, row in zip(STAMPS, NUMBERS, strict=True))]
+PLAIN = table(ROWS)
+WANTED = [[float(cell) for cell in row] for row in NUMBERS]
+VALUE_COLUMNS = ("v_a", "v_b", "v_c", "i_a", "i_b", "i_c")
+
+
+@pytest.fixture
+def site(tmp_path: Path) -> SmallSite:
+    """A site whose map leaves to the reader whatever it can find out."""
+    return SmallSite(tmp_path).write()
+
+
+def read_right(site: SmallSite, text: str | bytes, encoding: str = "utf-8") -> None:
+    """All four rows are stored, with every value."""
+    outcome = site.take(text, encoding=encoding)
+    assert counts(outcome) == (4, 4, 0, 0, 0), outcome["rejects"]
+    assert outcome["values_rejected"] == 0
+    assert site.starts() == STAMPS
+    assert site.stored(*VALUE_COLUMNS) == WANTED
+
+
+@pytest.mark.parametrize("delimiter", [";", ",", "\t", "|"])
+@pytest.mark.parametrize("stated", [True, False])
+def test_delimiters(site: SmallSite, delimiter: str, stated: bool) -> None:
+    """Stated or found."""
+    site.write(delimiter=delimiter if stated else None)
+    read_right(site, table(ROWS, delimiter))
+
+
+@pytest.mark.parametrize("delimiter", [";", "\t", "|"])
+@pytest.mark.parametrize("stated", [True, False])
+def test_decimal_commas(site: SmallSite, delimiter: str, stated: bool) -> None:
+    """Beside each delimiter that leaves the comma free."""
+    site.write(decimal="," if stated else None)
+    read_right(site, table(ROWS, delimiter).replace(".", ","))
+
+
+def test_decimal_commas_in_quotes(site: SmallSite) -> None:
+    """A comma delimits and, inside quotes, divides."""
+    rows = [[f'"{cell.replace(".", ",")}"' for cell in row] for row in ROWS]
+    read_right(site, table(rows))
+
+
+THOUSANDS = (
+    (";", "1.234,5", ",", "."),
+    (";", "1'234.5", ".", "'"),
+    (";", "1’234.5", ".", "’"),
+    (";", "1 234,5", ",", " "),
+    (";", "1\u00a0234,5", ",", "\u00a0"),
+    (";", "1\u202f234,5", ",", "\u202f"),
+    (";", "1,234.5", ".", ","),
+    (",", '"1,234.5"', ".", ","),
+    ("\t", "1 234.5", ".", " "),
+)
+
+
+@pytest.mark.parametrize(("delimiter", "printed", "decimal", "mark"), THOUSANDS)
+@pytest.mark.parametrize("stated", [True, False])
+def test_thousands(
+    site: SmallSite, delimiter: str, printed: str, decimal: str, mark: str, stated: bool
+) -> None:
+    """Grouped numbers beside ungrouped ones and signs."""
+    site.write(decimal=decimal if stated else None, thousands=mark if stated else None)
+    rows: list[list[object]] = [NAMES]
+    for stamp in STAMPS:
+        small = f"230{decimal}25"
+        quoted = f'"{small}"' if decimal == delimiter else small
+        rows.append([stamp, quoted, quoted, quoted, printed, "999", f"12{decimal}5"])
+    outcome = site.take(table(rows, delimiter))
+    assert counts(outcome) == (4, 4, 0, 0, 0)
+    assert outcome["values_rejected"] == 0, outcome["rejects"]
+    assert site.stored("v_a", "i_a", "i_b", "i_c") == [[230.25, 1234.5, 999.0, 12.5]] * 4
+
+
+@pytest.mark.parametrize("printed", ["1.23.4,5", "12.34,5", "1.2345,5", "1,5,5", "1.5", "abc", "5A"])
+def test_broken_numbers_are_told(site: SmallSite, printed: str) -> None:
+    """A mark that does not group by three makes no number: never a silent guess."""
+    site.write(decimal=",", thousands=".")
+    rows: list[list[object]] = [NAMES, [STAMPS[0], "230,5", "231", "232", printed, "1", "2"]]
+    rows.append([STAMPS[1], "230,5", "231", "232", "1.234,5", "1", "2"])
+    outcome = site.take(table(rows, ";"))
+    assert counts(outcome) == (2, 2, 0, 0, 0)
+    assert outcome["values_rejected"] == 1
+    reject = outcome["rejects"][0]
+    assert (reject["line"], reject["column"], reject["text"]) == (2, "i_a", printed)
+    assert site.stored("i_a") == [[None], [1234.5]]
+
+
+ACCENTED = "Größe,Va,Vb,Vc,Ia,Ib,Ic" + PLAIN[PLAIN.index("\n") :]
+ENCODINGS = (
+    ("utf-8", None),
+    ("utf-8-sig", None),
+    ("utf-8-sig", "utf-8"),
+    ("cp1252", None),
+    ("cp1252", "cp1252"),
+    ("latin-1", "latin-1"),
+    ("utf-16", None),
+    ("utf-16", "utf-16"),
+    ("utf-16-le", "utf-16-le"),
+    ("utf-16-be", "utf-16-be"),
+    ("cp1250", "cp1250"),
+)
+
+
+@pytest.mark.parametrize(("written", "named"), ENCODINGS)
+@pytest.mark.parametrize("end", ["\n", "\r\n", "\r"])
+def test_encodings(site: SmallSite, written: str, named: str | None, end: str) -> None:
+    """A column with an umlaut is found in each; each with every line end."""
+    site.write(timestamp="Größe", encoding=named)
+    read_right(site, ACCENTED.replace("\n", end).encode(written))
+
+
+@pytest.mark.parametrize("written", ["utf-8-sig", "utf-16", "utf-8"])
+def test_byte_order_mark_without_a_header(site: SmallSite, written: str) -> None:
+    """The mark is no part of the first stamp."""
+    numbered = {key: place for place, key in enumerate(VALUES, 2)}
+    site.write(numbered, timestamp=1, header_row=0)
+    read_right(site, PLAIN.partition("\n")[2].encode(written))
+
+
+def test_accent_as_the_very_last_byte(site: SmallSite) -> None:
+    """A Windows file that ends in a lone accented letter is no broken UTF-8."""
+    rows = [[*row, "note" if n == 0 else "é"] for n, row in enumerate(ROWS)]
+    read_right(site, table(rows).rstrip("\n").encode("cp1252"))
+
+
+def test_one_broken_byte_costs_one_row_at_most(site: SmallSite) -> None:
+    """A transmission fault in one row leaves the others readable."""
+    site.write(timestamp="Größe")
+    broken = ACCENTED.encode().replace(b"231.5,231.25", b"231.5,2\xff\x8131")
+    outcome = site.take(broken)
+    assert outcome["rows_read"] == 4
+    assert outcome["rows_rejected"] + outcome["values_rejected"] == 1
+
+
+@pytest.mark.parametrize("end", ["\n", "\r\n", "\r"])
+@pytest.mark.parametrize("last", [True, False])
+def test_line_ends(site: SmallSite, end: str, last: bool) -> None:
+    """With and without one at the end of the file."""
+    read_right(site, PLAIN.replace("\n", end) if last else PLAIN.replace("\n", end)[: -len(end)])
+
+
+def test_mixed_line_ends(site: SmallSite) -> None:
+    """Lines are counted alike whatever ends them."""
+    lines = PLAIN.rstrip("\n").split("\n")
+    broken = [*lines[:3], "torn", *lines[3:]]
+    ends = ["\r\n", "\n", "\r", "\n", "\r\n", ""]
+    outcome = site.take("".join(a + b for a, b in zip(broken, ends, strict=True)))
+    assert counts(outcome) == (5, 4, 0, 0, 1)
+    assert outcome["rejects"][0]["line"] == 4
+    assert site.stored(*VALUE_COLUMNS) == WANTED
+
+
+def test_blank_lines_are_no_rows(site: SmallSite) -> None:
+    """Blank lines and lines of blanks count as lines, not as rows."""
+    lines = PLAIN.rstrip("\n").split("\n")
+    outcome = site.take("\n".join([*lines[:2], "", "   ", *lines[2:], "torn", "", ""]))
+    assert counts(outcome) == (5, 4, 0, 0, 1)
+    assert outcome["rejects"][0]["line"] == 8
+
+
+def test_quoted_fields(site: SmallSite) -> None:
+    """Everything quoted, some with spaces inside."""
+    read_right(site, table([[f'"{cell}"' for cell in row] for row in ROWS]))
+
+
+def test_quotes_hold_delimiters_quotes_and_line_ends(site: SmallSite) -> None:
+    """A note with all three; line numbers of later rows are those of the file."""
+    notes = ["Note, free", 'a, "b"', "two\nlines", "", "x"]
+    rows = [
+        [*row, '"' + note.replace('"', '""') + '"'] for row, note in zip(ROWS, notes, strict=True)
+    ]
+    lines = table(rows) + "torn\n"
+    outcome = site.take(lines)
+    assert counts(outcome) == (5, 4, 0, 0, 1)
+    assert outcome["rejects"][0]["line"] == lines.count("\n")
+    assert site.query("select line from interval order by line") == [[2], [3], [5], [6]]
+    assert site.stored(*VALUE_COLUMNS) == WANTED
+
+
+def test_lines_inside_quotes_before_the_header(site: SmallSite) -> None:
+    """A quoted remark over two lines in the preamble does not hide the header."""
+    read_right(site, '"Remark\nover two lines"\n' + PLAIN)
+
+
+def test_lines_inside_quotes_before_a_stated_header(site: SmallSite) -> None:
+    """`header_row` counts the lines of the file, also those inside quotes."""
+    site.write(header_row=3)
+    read_right(site, '"Remark\nover two lines"\n' + PLAIN)
+
+
+def test_inch_mark_in_the_preamble(site: SmallSite) -> None:
+    """A quote in the middle of a field is a character like any other."""
+    read_right(site, 'Meter in a 19" rack\n' + PLAIN)
+
+
+def test_stray_quote_costs_its_own_row(site: SmallSite) -> None:
+    """A field that opens a quote and never closes it takes no other row with it."""
+    lines = PLAIN.rstrip("\n").split("\n")
+    outcome = site.take("\n".join([*lines[:2], '"torn,1,2,3,4,5,6', *lines[2:]]) + "\n")
+    assert counts(outcome) == (5, 4, 0, 0, 1)
+    assert outcome["rejects"][0]["line"] == 3
+
+
+@pytest.mark.parametrize("name", ["export (1).csv", "export[1].csv", "ex{p,q}ort.csv", "é.csv"])
+def test_file_names_are_names(site: SmallSite, name: str) -> None:
+    """No character of a file's name means anything but itself."""
+    assert counts(site.take(PLAIN, name)) == (4, 4, 0, 0, 0)
+
+
+@pytest.mark.parametrize("name", ["export*.csv", "expor?.csv", "line=3/export.csv", "log.csv.gz"])
+def test_file_names_with_a_meaning_elsewhere(site: SmallSite, name: str) -> None:
+    """Not even a star, a question mark, a key with a value, or a packer's ending."""
+    november = PLAIN.replace("2026-10", "2026-11")
+    site.export(november, "exports.csv")
+    assert counts(site.take(PLAIN, name)) == (4, 4, 0, 0, 0)
+    assert site.starts() == STAMPS
