@@ -52,6 +52,9 @@ class Flag(IntFlag):
     POWER_MISMATCH = 32
     SIGN_UNEXPECTED = 64
     INCOMPLETE = 128
+    Q_FROM_VOLT_AMPERES = 256
+    LIGHT_PHASE = 512
+    ANGLES_DO_NOT_CLOSE = 1024
 
 
 @dataclass(frozen=True)
@@ -91,12 +94,15 @@ class PowerFactorReading:
         assumption applies.
     flags : ndarray of uint16
         Bits of :class:`Flag`.
+    assumed : BoolArray
+        True where the sense is an assumption.
     """
 
     magnitude: FloatArray
     direction: FloatArray
     sense: FloatArray
     flags: npt.NDArray[np.uint16]
+    assumed: BoolArray
 
 
 def phase_rotation(sequence: str) -> ComplexArray:
@@ -134,21 +140,24 @@ def read_power_factor(
     rule: PowerFactorSense,
     metered_p: FloatArray | None = None,
     lead_lag: FloatArray | None = None,
+    metered_q: FloatArray | None = None,
 ) -> PowerFactorReading:
     """Magnitude, direction and lead/lag sense of a printed power factor.
 
     Parameters
     ----------
     printed : FloatArray
-        Shape (3, n): the numbers as printed, sign and percent included.
+        Shape (3, n): the numbers as printed, sign and percent included; NaN where none is.
     rule : PowerFactorSense
         The convention of this export.
     metered_p : FloatArray, optional
-        Shape (3, n), W: metered active power, whose sign settles the direction where the
-        power factor's sign is taken by lead/lag.
+        Shape (3, n), W: metered active power; its sign is the direction.
     lead_lag : FloatArray, optional
         Shape (3, n): +1 lagging, -1 leading as printed in a column of its own; NaN where
         it says nothing.
+    metered_q : FloatArray, optional
+        Shape (3, n), var: metered total reactive power, whose sign goes before an
+        assumption.
 
     Returns
     -------
@@ -159,32 +168,34 @@ def read_power_factor(
     -----
     ``unsigned``: import; the assumed sense; a negative number is flagged
     (``sign-unexpected``), its magnitude kept. ``sign-is-power-flow``: the sign is that of
-    P; the assumed sense holds at import only, since an assumption about a load says
-    nothing of a generator: at export the sense is NaN and Q stays unknown.
-    ``sign-is-lead-lag``: the sign bit decides, so "-0.00" of a pure reactor keeps its
-    sense. |PF| up to 1.005 is clamped to 1 and flagged.
+    P. ``sign-is-lead-lag``: the sign bit decides, so "-0.00" of a pure reactor keeps its
+    sense. An assumption holds at import only, since one about a load says nothing of a
+    generator: at export the sense is then NaN and Q stays unknown. |PF| above 1 is taken
+    as 1 and flagged; the reader has blanked what lies above `PF_CLAMP_BOUND`.
     """
     scaled = printed / rule.per_unit
     magnitude = np.abs(scaled)
     flags = np.where(magnitude > 1.0, np.uint16(Flag.PF_CLAMPED), np.uint16(0))
     magnitude = np.minimum(magnitude, 1.0)
-    negative = np.signbit(scaled)
+    negative = np.signbit(scaled) & ~np.isnan(scaled)
     direction = np.ones_like(scaled)
-    if metered_p is not None:
-        direction[metered_p < 0] = -1.0
-    if rule.convention == "sign-is-lead-lag":
-        sense = np.where(negative == (rule.lagging_sign < 0), 1.0, -1.0)
-        return PowerFactorReading(magnitude, direction, sense, flags)
-    assumed = float(rule.assumed) if rule.assumed else np.nan
     if rule.convention == "sign-is-power-flow":
-        direction = np.where(negative & (scaled != 0), -1.0, 1.0)
-    else:
+        direction[negative & (scaled != 0)] = -1.0
+    elif rule.convention != "sign-is-lead-lag":
         flags |= np.where(scaled < 0, np.uint16(Flag.SIGN_UNEXPECTED), np.uint16(0))
-    sense = np.where(direction > 0, assumed, np.nan)
-    told = np.zeros(scaled.shape, dtype=bool)
+    if metered_p is not None:
+        direction = np.where(np.isnan(metered_p), direction, np.where(metered_p < 0, -1.0, 1.0))
+    sense = np.full(scaled.shape, np.nan)
     if lead_lag is not None:
-        told = ~np.isnan(lead_lag)
-        sense = np.where(told, lead_lag, sense)
-    assumes = ~told & ~np.isnan(sense) & (magnitude < 1.0)
-    flags |= np.where(assumes, np.uint16(Flag.LEAD_LAG_ASSUMED), np.uint16(0))
-    return PowerFactorReading(magnitude, direction, sense, flags)
+        sense = lead_lag.copy()
+    if rule.convention == "sign-is-lead-lag":
+        by_sign = np.where(negative == (rule.lagging_sign < 0), 1.0, -1.0)
+        sense = np.where(np.isnan(sense) & ~np.isnan(scaled), by_sign, sense)
+    if metered_q is not None:
+        by_total = np.where(metered_q == 0, np.nan, np.sign(metered_q) * direction)
+        sense = np.where(np.isnan(sense), by_total, sense)
+    assumed = np.isnan(sense) & (direction > 0)
+    if rule.assumed:
+        sense = np.where(assumed, float(rule.assumed), sense)
+    assumed &= rule.assumed != 0
+    return PowerFactorReading(magnitude, direction, sense, flags, assumed)

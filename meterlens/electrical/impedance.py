@@ -37,7 +37,7 @@ def wye_impedance(
     -----
     cos φ = P/√(P² + Q²) directly, without going through the angle.
     """
-    with np.errstate(divide="ignore", invalid="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         scale = v / (i * np.sqrt(p * p + q * q))
         return np.asarray(scale * p), np.asarray(scale * q)
 
@@ -102,6 +102,8 @@ def wye_from_delta(z: ComplexArray) -> ComplexArray:
     Returns
     -------
     ComplexArray
-        Z_a, Z_b, Z_c, ohm: Z_a = Z_ab Z_ca/(Z_ab + Z_bc + Z_ca), cyclic.
+        Z_a, Z_b, Z_c, ohm: Z_a = Z_ab Z_ca/(Z_ab + Z_bc + Z_ca), cyclic; NaN where an
+        element is open (infinite).
     """
-    return np.asarray(z * np.roll(z, 1, axis=0) / z.sum(axis=0))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return np.asarray(z * np.roll(z, 1, axis=0) / z.sum(axis=0))

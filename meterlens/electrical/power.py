@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from meterlens.electrical.conventions import BoolArray, FloatArray
+from meterlens.electrical.conventions import PF_CLAMP_BOUND, BoolArray, FloatArray
 
 __all__ = [
     "apparent_power_effective",
@@ -108,7 +108,7 @@ def power_factor(p: FloatArray, s: FloatArray, known: BoolArray) -> FloatArray:
     """
     with np.errstate(divide="ignore", invalid="ignore"):
         ratio = p / s
-    believable = known & (s > 0) & (np.abs(ratio) <= 1.005)
+    believable = known & (s > 0) & (np.abs(ratio) <= PF_CLAMP_BOUND)
     return np.where(believable, np.clip(ratio, -1.0, 1.0), np.nan)
 
 
@@ -125,10 +125,12 @@ def total_where_carried(per_phase: FloatArray, carries: BoolArray) -> FloatArray
     Returns
     -------
     FloatArray
-        Shape (n,). A phase without current adds nothing and spoils nothing.
+        Shape (n,). A phase without current adds nothing and spoils nothing; where no phase
+        is known, neither is the total.
     """
-    a, b, c = np.where(np.isnan(per_phase) & ~carries, 0.0, per_phase)
-    return np.asarray(a + b + c)
+    unknown = np.isnan(per_phase)
+    a, b, c = np.where(unknown & ~carries, 0.0, per_phase)
+    return np.where(unknown.all(axis=0), np.nan, a + b + c)
 
 
 def apparent_power_effective(

@@ -10,7 +10,7 @@ import io
 import json
 import os
 import sys
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager, redirect_stderr, redirect_stdout
 from dataclasses import dataclass
 from pathlib import Path
@@ -20,7 +20,13 @@ from unittest.mock import patch
 from meterlens.cli.main import main
 
 COUNTS = ("rows_stored", "rows_replaced", "rows_duplicate", "rows_rejected")
+STAMPS = tuple(f"2026-10-01T00:{minute:02d}" for minute in (0, 15, 30, 45))
 VALUES = {"v_a": "Va", "v_b": "Vb", "v_c": "Vc", "i_a": "Ia", "i_b": "Ib", "i_c": "Ic"}
+
+HEADER = "Time,Va,Vb,Vc,Ia,Ib,Ic\n"
+#: Four good rows of the usual map.
+GOOD = HEADER + "".join(f"{stamp},230,231,232,10,11,12\n" for stamp in STAMPS)
+PNG = b"\x89PNG\r\n\x1a\n\x00\x00\x00\rIHDR\x00\x00\x01\x00"
 
 
 @dataclass(frozen=True)
@@ -77,7 +83,7 @@ class SmallSite:
     folder: Path
     timezone: str = "Europe/Lisbon"
 
-    def write(self, columns: dict[str, object] | None = None, **changes: object) -> SmallSite:
+    def write(self, columns: Mapping[str, object] | None = None, /, **changes: object) -> SmallSite:
         """Write site.toml: the usual map, with `changes` (None takes a key out)."""
         lines = [
             "[site]",
@@ -163,3 +169,12 @@ def counts(outcome: dict[str, Any]) -> tuple[int, ...]:
 def table(rows: Sequence[Sequence[object]], delimiter: str = ",", end: str = "\n") -> str:
     """Rows as text, every line ended."""
     return "".join(delimiter.join(map(str, row)) + end for row in rows)
+
+
+def refused(ran: Ran, *words: str) -> None:
+    """One line on stderr with all these words, exit 1, nothing on stdout."""
+    assert (ran.code, ran.out) == (1, ""), ran
+    assert ran.err.startswith("meterlens: ")
+    assert ran.err.count("\n") == 1, ran.err
+    for word in words:
+        assert word in ran.err, ran.err

@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 from collections import Counter
 from datetime import date
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -157,7 +158,7 @@ def test_clock_change(demo: dict[str, Any], site: SmallSite) -> None:
             f"where service = '{one['service']}' and start_local::date = '{day}' order by 1"
         )
         assert len(starts) == 100
-        assert {b[0] - a[0] for a, b in zip(starts, starts[1:], strict=False)} == {900}
+        assert {b[0] - a[0] for a, b in pairwise(starts)} == {900}
         assert [row[1] for row in starts] == [180] * 16 + [120] * 84
 
 

@@ -7,10 +7,13 @@ from pathlib import Path
 import pytest
 from small_site import VALUES, SmallSite, counts, table
 
-NAMES = ["Time", "Va", "Vb", "Vc", "Ia", "Ib", "Ic"]
+NAMES: list[object] = ["Time", "Va", "Vb", "Vc", "Ia", "Ib", "Ic"]
 STAMPS = [f"2026-10-01T00:{minute:02d}" for minute in (0, 15, 30, 45)]
 NUMBERS = [[f"{230 + n}.5", "231.25", "232", f"{10 + n}.125", "11.5", "0.75"] for n in range(4)]
-ROWS = [NAMES, *([stamp, *row] for stamp, row in zip(STAMPS, NUMBERS, strict=True))]
+ROWS: list[list[str]] = [
+    list(map(str, NAMES)),
+    *([stamp, *row] for stamp, row in zip(STAMPS, NUMBERS, strict=True)),
+]
 PLAIN = table(ROWS)
 WANTED = [[float(cell) for cell in row] for row in NUMBERS]
 VALUE_COLUMNS = ("v_a", "v_b", "v_c", "i_a", "i_b", "i_c")
@@ -84,7 +87,9 @@ def test_thousands(
     assert site.stored("v_a", "i_a", "i_b", "i_c") == [[230.25, 1234.5, 999.0, 12.5]] * 4
 
 
-@pytest.mark.parametrize("printed", ["1.23.4,5", "12.34,5", "1.2345,5", "1,5,5", "1.5", "abc", "5A"])
+@pytest.mark.parametrize(
+    "printed", ["1.23.4,5", "12.34,5", "1.2345,5", "1,5,5", "1.5", "abc", "5A"]
+)
 def test_broken_numbers_are_told(site: SmallSite, printed: str) -> None:
     """A mark that does not group by three makes no number: never a silent guess."""
     site.write(decimal=",", thousands=".")

@@ -1,0 +1,142 @@
+"""Small exports written by hand: every power factor convention, percent, and what is clamped.
+
+All cases: 230 V and 10 A on phase a, 2.3 kVA; a power factor of 0.8 makes 1.84 kW and
+1.38 kvar (the 3-4-5 triangle).
+"""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+from small_site import VALUES, SmallSite, counts
+
+STAMPS = ("2026-10-01T00:00", "2026-10-01T00:15")
+PF = {"pf_a": "PFa", "pf_b": "PFb", "pf_c": "PFc"}
+LEAD_LAG = {"lead_lag_a": "La", "lead_lag_b": "Lb", "lead_lag_c": "Lc"}
+POWER = {"p_a_kw": "Pa", "p_b_kw": "Pb", "p_c_kw": "Pc"}
+REACTIVE = {"q_a_kvar": "Qa", "q_b_kvar": "Qb", "q_c_kvar": "Qc"}
+APPARENT = {"s_a_kva": "Sa", "s_b_kva": "Sb", "s_c_kva": "Sc"}
+
+
+def export(columns: dict[str, str], *cells: str) -> str:
+    """Two equal rows: voltages, currents, and each further cell for all three phases."""
+    names = [*VALUES.values(), *columns.values()]
+    values = ["230"] * 3 + ["10"] * 3 + [cell for cell in cells for _ in "abc"]
+    head = ",".join(["Time", *names]) + "\n"
+    return head + "".join(",".join([stamp, *values]) + "\n" for stamp in STAMPS)
+
+
+LAG, LEAD = 1.38, -1.38
+CASES: tuple[tuple[object, ...], ...] = (
+    # unsigned: the map's assumption
+    ("unsigned", {"assume": "lagging"}, PF, ("0.8",), (1.84, LAG)),
+    ("unsigned", {"assume": "leading"}, PF, ("0.8",), (1.84, LEAD)),
+    ("unsigned", {"assume": "lagging", "pf_unit": "percent"}, PF, ("80",), (1.84, LAG)),
+    # the sign of P; lead or lag from words, from a kvar column, or assumed
+    ("sign-is-power-flow", {"assume": "lagging"}, PF, ("0.8",), (1.84, LAG)),
+    ("sign-is-power-flow", {}, PF | LEAD_LAG, ("0.8", "lead"), (1.84, LEAD)),
+    ("sign-is-power-flow", {}, PF | LEAD_LAG, ("-0.8", "lag"), (-1.84, LEAD)),
+    ("sign-is-power-flow", {}, PF | LEAD_LAG, ("-0.8", "Cap."), (-1.84, LAG)),
+    ("sign-is-power-flow", {}, PF | REACTIVE, ("-0.8", "1.38"), (-1.84, LAG)),
+    # the sign of lead or lag, both customs
+    ("sign-is-lead-lag", {"lagging_sign": "negative"}, PF, ("-0.8",), (1.84, LAG)),
+    ("sign-is-lead-lag", {"lagging_sign": "negative"}, PF, ("0.8",), (1.84, LEAD)),
+    ("sign-is-lead-lag", {"lagging_sign": "positive"}, PF, ("0.8",), (1.84, LAG)),
+    ("sign-is-lead-lag", {"lagging_sign": "positive"}, PF, ("-0.8",), (1.84, LEAD)),
+    ("sign-is-lead-lag", {"lagging_sign": "negative", "pf_unit": "percent"}, PF, ("-80",),
+     (1.84, LAG)),
+    # a power column says that it is export: leading export is quadrant II
+    ("sign-is-lead-lag", {"lagging_sign": "negative"}, PF | POWER, ("0.8", "-1.84"),
+     (-1.84, LAG)),
+    # kW with kvar, kW with kVA
+    ("from-power", {}, POWER | REACTIVE, ("1.84", "1.38"), (1.84, LAG)),
+    ("from-power", {}, POWER | REACTIVE, ("1.84", "-1.38"), (1.84, LEAD)),
+    ("from-power", {}, POWER | REACTIVE, ("-1.84", "-1.38"), (-1.84, LEAD)),
+    ("from-power", {"assume": "lagging"}, POWER | APPARENT, ("1.84", "2.3"), (1.84, LAG)),
+    ("none", {}, {}, (), (None, None)),
+)  # fmt: skip
+
+
+@pytest.mark.parametrize(("convention", "keys", "columns", "cells", "wanted"), CASES)
+def test_conventions(
+    tmp_path: Path,
+    convention: str,
+    keys: dict[str, object],
+    columns: dict[str, str],
+    cells: tuple[str, ...],
+    wanted: tuple[float | None, float | None],
+) -> None:
+    """P and Q of each phase, and of the three together."""
+    site = SmallSite(tmp_path).write(VALUES | columns, pf_convention=convention, **keys)
+    outcome = site.take(export(columns, *cells))
+    assert counts(outcome) == (2, 2, 0, 0, 0)
+    assert outcome["values_rejected"] == 0
+    rows = site.query(
+        "select p_a_kw, q_a_kvar, p_c_kw, q_c_kvar, p_kw, q_kvar "
+        "from interval_power order by start_utc"
+    )
+    p, q = wanted
+    if p is None or q is None:
+        assert rows == [[None] * 6] * 2
+    else:
+        assert rows == [pytest.approx([p, q, p, q, 3 * p, 3 * q], rel=1e-12)] * 2
+
+
+@pytest.mark.parametrize("word", ["lag", "LAG", "Lagging", "ind", "ind.", "inductive", " lag "])
+def test_words_for_lagging(tmp_path: Path, word: str) -> None:
+    """However it is written."""
+    site = SmallSite(tmp_path).write(VALUES | PF | LEAD_LAG, pf_convention="sign-is-power-flow")
+    site.take(export(PF | LEAD_LAG, "0.8", word))
+    assert site.query("select q_a_kvar > 0 from interval_power") == [[True]] * 2
+
+
+def test_word_that_is_neither(tmp_path: Path) -> None:
+    """It is rejected by itself; Q is open then."""
+    site = SmallSite(tmp_path).write(VALUES | PF | LEAD_LAG, pf_convention="sign-is-power-flow")
+    outcome = site.take(export(PF | LEAD_LAG, "0.8", "sideways"))
+    assert counts(outcome) == (2, 2, 0, 0, 0)
+    assert outcome["values_rejected"] == 6
+    assert {r["column"] for r in outcome["rejects"]} == set(LEAD_LAG)
+    assert (
+        site.query("select p_a_kw, q_a_kvar from interval_power")
+        == [[pytest.approx(1.84), None]] * 2
+    )
+
+
+@pytest.mark.parametrize(
+    ("unit", "printed", "clamped", "rejected"),
+    [
+        ("fraction", "1.000", 0, 0),
+        ("fraction", "1.004", 6, 0),
+        ("fraction", "-1.004", 6, 0),
+        ("fraction", "1.006", 0, 6),
+        ("fraction", "80", 0, 6),
+        ("percent", "100.4", 6, 0),
+        ("percent", "100.6", 0, 6),
+    ],
+)
+def test_power_factor_above_one(
+    tmp_path: Path, unit: str, printed: str, clamped: int, rejected: int
+) -> None:
+    """By half a percent it is clamped and counted, beyond that it is no value."""
+    site = SmallSite(tmp_path).write(
+        VALUES | PF, pf_convention="sign-is-lead-lag", lagging_sign="negative", pf_unit=unit
+    )
+    outcome = site.take(export(PF, printed))
+    assert counts(outcome) == (2, 2, 0, 0, 0)
+    assert (outcome["values_clamped"], outcome["values_rejected"]) == (clamped, rejected)
+    wanted = [None] if rejected else [pytest.approx(2.3)]
+    assert site.query("select p_a_kw from interval_power") == [wanted] * 2
+
+
+def test_percent_is_kept_as_printed(tmp_path: Path) -> None:
+    """The exported column stays as the meter printed it; `pf_a` is the fraction."""
+    site = SmallSite(tmp_path).write(
+        VALUES | PF, pf_convention="unsigned", assume="lagging", pf_unit="percent"
+    )
+    site.take(export(PF, "80"))
+    rows = site.query(
+        "select pf_exported_a, pf_a from interval join interval_power using (service, start_utc)"
+    )
+    assert rows == [[80.0, pytest.approx(0.8)]] * 2
