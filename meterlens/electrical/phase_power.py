@@ -21,7 +21,7 @@ from meterlens.electrical.conventions import (
 )
 from meterlens.electrical.readings import IntervalReadings, ServiceConstants
 
-__all__ = ["PhasePower", "TotalPower", "phase_power", "total_power"]
+__all__ = ["PhasePower", "TotalPower", "flag_where", "phase_power", "total_power"]
 
 FlagArray = npt.NDArray[np.uint16]
 
@@ -64,7 +64,19 @@ class TotalPower:
 
 
 def flag_where(mask: BoolArray, flag: Flag) -> FlagArray:
-    """The flag's bit where the mask is true."""
+    """The flag's bit where the mask is true.
+
+    Parameters
+    ----------
+    mask : BoolArray
+        Any shape, dimensionless.
+    flag : Flag
+
+    Returns
+    -------
+    ndarray of uint16
+        The same shape.
+    """
     return mask.astype(np.uint16) * np.uint16(flag)
 
 
@@ -151,7 +163,7 @@ def phase_power(
         | flag_where(np.isnan(q) & ~np.isnan(p), Flag.Q_UNKNOWN)
         | flag_where(mismatch, Flag.POWER_MISMATCH)
     )
-    s = _first_known(s, np.sqrt(p * p + q * q))
+    s = np.where(np.isnan(s) & ~blank, np.sqrt(p * p + q * q), s)
     return PhasePower(p, q, s, np.bitwise_or.reduce(flags, axis=0))
 
 

@@ -6,17 +6,22 @@ units (kW, kvar, kVA).
 
 from __future__ import annotations
 
+import re
+
 __all__ = [
     "DERIVED_FRACTIONS",
     "DERIVED_PHASES",
     "DERIVED_TOTALS",
-    "KEY_COLUMNS",
+    "NUMBER",
     "READING_COLUMNS",
     "STORE_COLUMN",
     "WATTS_PER_KILOWATT",
 ]
 
 WATTS_PER_KILOWATT = 1000.0
+
+#: A printed number with either decimal mark.
+NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)([eE][+-]?\d+)?")
 
 #: Key of a column map → column of the store, in the order of the table.
 STORE_COLUMN = {
@@ -53,16 +58,6 @@ STORE_COLUMN = {
 }
 
 READING_COLUMNS = tuple(STORE_COLUMN.values())
-
-KEY_COLUMNS = (
-    "service",
-    "start_utc",
-    "interval_min",
-    "utc_offset_min",
-    "file_id",
-    "line",
-    "given",
-)
 
 #: Kernel field → (name pattern, divisor, stored as double), one column a phase.
 DERIVED_PHASES = {

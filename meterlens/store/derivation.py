@@ -29,7 +29,7 @@ from meterlens.store.columns import (
     DERIVED_TOTALS,
     WATTS_PER_KILOWATT,
 )
-from meterlens.store.merge import UNCONTESTED, Rows
+from meterlens.store.rows import UNCONTESTED, Rows
 from meterlens.store.zones import ZoneTable
 
 __all__ = ["KERNEL_BATCH", "ROW_GROUP", "derived_batches", "service_constants", "table_schema"]

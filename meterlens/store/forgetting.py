@@ -11,7 +11,8 @@ import numpy as np
 from meterlens.settings import Service
 from meterlens.store import derivation
 from meterlens.store.database import Store
-from meterlens.store.merge import Rows, Superseded, column_bits, given_bits, merge_rows
+from meterlens.store.merge import merge_rows
+from meterlens.store.rows import Rows, Superseded, column_bits, given_bits
 from meterlens.store.tables import stored_rows, superseded_table, written_rows
 from meterlens.store.zones import ZoneTable
 

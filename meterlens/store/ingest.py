@@ -15,10 +15,12 @@ from meterlens.settings import Service, map_digest
 from meterlens.store import derivation
 from meterlens.store.columns import READING_COLUMNS
 from meterlens.store.database import Store, stale_services, write_settings
+from meterlens.store.export_rows import ExportRows, Reject
 from meterlens.store.export_text import opened_export
 from meterlens.store.forgetting import remove_file
-from meterlens.store.merge import UNCONTESTED, Merge, Outcome, Rows, Superseded, merge_rows
-from meterlens.store.reading import ExportRows, Reject, column_map_of, read_rows
+from meterlens.store.merge import Merge, Outcome, merge_rows
+from meterlens.store.reading import column_map_of, read_rows
+from meterlens.store.rows import UNCONTESTED, Rows, Superseded
 from meterlens.store.tables import stored_rows, superseded_table, written_rows
 from meterlens.store.zones import MICROSECONDS_PER_MINUTE, ZoneTable, zone_table
 

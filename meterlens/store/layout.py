@@ -18,6 +18,7 @@ from meterlens.errors import ExportError
 from meterlens.settings import ColumnMap
 from meterlens.store.columns import STORE_COLUMN
 from meterlens.store.export_text import ExportText
+from meterlens.store.number_marks import find_decimal, find_thousands, grouped_pattern
 
 __all__ = ["ISO_FORMATS", "Layout", "find_layout"]
 
@@ -68,8 +69,7 @@ class Layout:
         """Regular expression of a number with grouped thousands; None where none are used."""
         if self.thousands is None:
             return None
-        mark, point = re.escape(self.thousands), re.escape(self.decimal)
-        return rf"[+-]?\d{{1,3}}({mark}\d{{3}})+({point}\d*)?"
+        return grouped_pattern(self.thousands, self.decimal)
 
 
 def find_layout(text: ExportText, columns: ColumnMap) -> Layout:
@@ -108,8 +108,9 @@ def find_layout(text: ExportText, columns: ColumnMap) -> Layout:
         raise ExportError(
             "has no rows after its header", file=text.file, line=first or 1, hint="Export it again."
         )
-    decimal = columns.decimal or _find_decimal(text, body, value_fields)
-    thousands = columns.thousands or _find_thousands(body, value_fields, decimal, delimiter)
+    cells = _number_cells(body, value_fields)
+    decimal = columns.decimal or find_decimal(text.file, cells)
+    thousands = columns.thousands or find_thousands(cells, decimal, delimiter)
     return Layout(
         delimiter=text.delimiter or delimiter,
         decimal=decimal,
@@ -272,45 +273,9 @@ def _after_units_row(
     return first
 
 
-def _sample(body: list[list[str]], value_fields: dict[str, int]) -> list[str]:
+def _number_cells(body: list[list[str]], value_fields: dict[str, int]) -> list[str]:
     fields = [i - 1 for key, i in value_fields.items() if not key.startswith("lead_lag_")]
     return [row[i].strip() for row in body for i in fields if i < len(row)]
-
-
-def _find_decimal(text: ExportText, body: list[list[str]], value_fields: dict[str, int]) -> str:
-    cells = _sample(body, value_fields)
-    commas = [c for c in cells if re.fullmatch(r"[+-]?\d+,\d+", c)]
-    points = [c for c in cells if re.fullmatch(r"[+-]?\d+\.\d+", c)]
-    both = [c for c in cells if re.fullmatch(r"[+-]?\d{1,3}(\.\d{3})+,\d+", c)]
-    if both or any(_only_decimal(c, ",") for c in commas):
-        return ","
-    if not commas or any(_only_decimal(c, ".") for c in points):
-        return "."
-    raise ExportError(
-        f'"{commas[0]}" could be a decimal or a thousands mark',
-        file=text.file,
-        key="decimal",
-        hint='Set decimal = "," or decimal = "." in the column map.',
-    )
-
-
-def _only_decimal(cell: str, mark: str) -> bool:
-    """True where the mark cannot be one of thousands."""
-    whole, _, rest = cell.lstrip("+-").partition(mark)
-    return len(rest) != 3 or len(whole) > 3 or whole == "0" or whole.startswith("0")
-
-
-def _find_thousands(
-    body: list[list[str]], value_fields: dict[str, int], decimal: str, delimiter: str
-) -> str | None:
-    other = "," if decimal == "." else "."
-    marks = [m for m in (other, "'", "’", " ", "\u00a0", "\u202f") if m != delimiter]
-    cells = _sample(body, value_fields)
-    for mark in marks:
-        pattern = rf"[+-]?\d{{1,3}}({re.escape(mark)}\d{{3}})+{re.escape(decimal)}\d+"
-        if any(re.fullmatch(pattern, cell) for cell in cells):
-            return mark
-    return None
 
 
 def _field_count(names: list[str], body: list[list[str]]) -> int:

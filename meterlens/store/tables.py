@@ -9,8 +9,8 @@ import pyarrow as pa
 
 from meterlens.store.columns import READING_COLUMNS
 from meterlens.store.database import Store
-from meterlens.store.merge import UNCONTESTED, Rows, Superseded
 from meterlens.store.query_files import load_query
+from meterlens.store.rows import UNCONTESTED, Rows, Superseded
 from meterlens.store.zones import IntArray, ZoneTable
 
 __all__ = ["rows_from_table", "stored_rows", "superseded_table", "written_rows"]

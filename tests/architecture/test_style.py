@@ -47,15 +47,19 @@ def test_files_stay_short(file: Path) -> None:
     assert lines <= LONGEST_FILE, f"{lines} lines: split it by topic"
 
 
+def code_lines(function: ast.FunctionDef | ast.AsyncFunctionDef) -> int:
+    """Lines of a function without its docstring: a cited equation may take its room."""
+    first = function.body[0]
+    documented = isinstance(first, ast.Expr) and ast.get_docstring(function) is not None
+    words = (first.end_lineno or first.lineno) - first.lineno + 1 if documented else 0
+    return (function.end_lineno or function.lineno) - function.lineno + 1 - words
+
+
 @by_file
 def test_functions_stay_short(file: Path) -> None:
     tree = ast.parse(file.read_text(encoding="utf-8"))
-    long = {
-        f.name: f.end_lineno - f.lineno + 1
-        for f in functions(tree)
-        if f.end_lineno and f.end_lineno - f.lineno + 1 > LONGEST_FUNCTION
-    }
-    assert not long
+    lengths = {f.name: code_lines(f) for f in functions(tree)}
+    assert not {name: count for name, count in lengths.items() if count > LONGEST_FUNCTION}
 
 
 @by_file

@@ -11,7 +11,6 @@ columns of both are compared.
 from __future__ import annotations
 
 import argparse
-import os
 import resource
 import statistics
 import subprocess
@@ -157,7 +156,9 @@ def main() -> None:
                 if turn:  # the first round warms the file cache
                     times[label].append(measured)
         worst = compare(store, sql)
-        report(arguments.rows, times, worst, {k: os.stat(t).st_size for k, (t, _) in commands.items()})
+        report(
+            arguments.rows, times, worst, {k: t.stat().st_size for k, (t, _) in commands.items()}
+        )
 
 
 def report(

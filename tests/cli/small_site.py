@@ -9,10 +9,11 @@ from __future__ import annotations
 import io
 import json
 import os
+import shutil
 import sys
 from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager, redirect_stderr, redirect_stdout
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 from unittest.mock import patch
@@ -82,6 +83,7 @@ class SmallSite:
 
     folder: Path
     timezone: str = "Europe/Lisbon"
+    _answers: dict[str, tuple[Any, ...]] = field(default_factory=dict, repr=False)
 
     def write(self, columns: Mapping[str, object] | None = None, /, **changes: object) -> SmallSite:
         """Write site.toml: the usual map, with `changes` (None takes a key out)."""
@@ -118,6 +120,7 @@ class SmallSite:
 
     def run(self, command: str, *arguments: str | Path) -> Ran:
         """Run one command on this site."""
+        self._answers.clear()
         return run(command, "--site", self.folder, *arguments)
 
     def ingest(self, *arguments: str | Path) -> list[dict[str, Any]]:
@@ -142,12 +145,20 @@ class SmallSite:
 
     def starts(self) -> list[str]:
         """Stored starts in UTC, ISO to the minute, in order."""
-        rows = self.query("select start_utc from interval order by start_utc")
-        return [row[0][:16] for row in rows]
+        return [row[0][:16] for row in self.stored("start_utc")]
 
     def stored(self, *columns: str) -> list[list[Any]]:
-        """The chosen columns of every stored interval, in order of start."""
-        return self.query(f"select {', '.join(columns)} from interval order by start_utc")
+        """The chosen columns of every stored interval, in order of start.
+
+        The view is asked for once after each command.
+        """
+        if not self._answers:
+            document = self.run("query", "--json", "interval").document
+            self._answers = dict(
+                zip(document["columns"], zip(*document["rows"], strict=True), strict=True)
+            )
+        chosen = [self._answers[column] for column in columns]
+        return [list(row) for row in zip(*chosen, strict=True)]
 
     def contents(self) -> list[list[Any]]:
         """Counts and sums over everything that the store shows."""
@@ -159,6 +170,12 @@ class SmallSite:
             "(select fsum(v_a) from interval), (select fsum(i_a) from interval), "
             "(select fsum(p_kw) from interval_power), (select fsum(epoch(start_utc)) from interval)"
         )
+
+
+def kept_copy(kept: SmallSite, folder: Path) -> SmallSite:
+    """The same site, store and all, in a folder of its own."""
+    shutil.copytree(kept.folder, folder)
+    return SmallSite(folder, kept.timezone)
 
 
 def counts(outcome: dict[str, Any]) -> tuple[int, ...]:

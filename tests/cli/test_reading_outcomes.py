@@ -37,7 +37,7 @@ def site(tmp_path: Path) -> SmallSite:
 
 def stands(site: SmallSite) -> list[list[object]]:
     """Clock reading, voltage and current of every stored interval."""
-    return site.stored("strftime(start_utc, '%H:%M')", "v_a", "i_a")
+    return [[start[11:16], v, i] for start, v, i in site.stored("start_utc", "v_a", "i_a")]
 
 
 def test_duplicates_in_one_file(site: SmallSite) -> None:
@@ -185,7 +185,8 @@ def test_corrected_map_that_moves_the_file_away(site: SmallSite, order: str) -> 
         site.take({"a": A, "b": B}[name], f"{name}.csv")
     site.write(**MOVED)
     assert counts(site.take(A, "a.csv")) == (3, 3, 0, 0, 0)
-    assert site.stored("strftime(start_utc, '%m-%d %H:%M')", "v_a", "i_a") == [
+    rows = site.stored("start_utc", "v_a", "i_a")
+    assert [[start[5:16].replace("T", " "), v, i] for start, v, i in rows] == [
         ["01-10 00:00", 230.0, 10.0],
         ["01-10 00:15", 230.0, None],
         ["01-10 00:30", 230.0, 10.0],
@@ -204,7 +205,8 @@ def test_moving_a_file_away_leaves_what_another_said_too(site: SmallSite, order:
         site.take({"a": A, "b": same}[name], f"{name}.csv")
     site.write(**MOVED)
     assert counts(site.take(A, "a.csv")) == (3, 3, 0, 0, 0)
-    assert site.stored("strftime(start_utc, '%m-%d %H:%M')", "v_a")[3:] == [
+    rows = site.stored("start_utc", "v_a")
+    assert [[start[5:16].replace("T", " "), v] for start, v in rows[3:]] == [
         ["10-01 00:00", 230.0],
         ["10-01 00:15", 230.0],
         ["10-01 00:45", 230.0],

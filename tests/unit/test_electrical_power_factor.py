@@ -36,7 +36,10 @@ def read(
 
 
 def words(reading: PowerFactorReading, phase: int = 0) -> Flag:
-    return Flag(int(reading.flags[phase, 0]))
+    """The flags of one phase, with the one that an assumed sense gives to Q ≠ 0."""
+    assumes = reading.assumed[phase, 0] and reading.magnitude[phase, 0] < 1.0
+    flags = Flag(int(reading.flags[phase, 0]))
+    return flags | Flag.LEAD_LAG_ASSUMED if assumes else flags
 
 
 def test_zero_and_minus_zero() -> None:
