@@ -147,7 +147,8 @@ def read_power_factor(
     Parameters
     ----------
     printed : FloatArray
-        Shape (3, n): the numbers as printed, sign and percent included; NaN where none is.
+        Shape (3, n), or (n,) of a total: the numbers as printed, sign and percent
+        included; NaN where none is.
     rule : PowerFactorSense
         The convention of this export.
     metered_p : FloatArray, optional
@@ -162,7 +163,7 @@ def read_power_factor(
     Returns
     -------
     PowerFactorReading
-        All arrays of shape (3, n).
+        All arrays of the shape of `printed`.
 
     Notes
     -----

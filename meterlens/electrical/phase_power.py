@@ -81,12 +81,16 @@ def flag_where(mask: BoolArray, flag: Flag) -> FlagArray:
 
 
 def _first_known(*candidates: FloatArray | None) -> FloatArray:
-    """The first value that is known, element by element."""
-    arrays = [x for x in candidates if x is not None]
-    result = arrays[0]
-    for other in arrays[1:]:
+    """The first value that is known, element by element; None is an absent column."""
+    result, *others = (x for x in candidates if x is not None)
+    for other in others:
         result = np.where(np.isnan(result), other, result)
     return result
+
+
+def _known(x: FloatArray | None, like: FloatArray) -> BoolArray:
+    """Where a column has a value."""
+    return np.zeros(like.shape, dtype=bool) if x is None else ~np.isnan(x)
 
 
 def _reactive(size: FloatArray, reading: PowerFactorReading) -> tuple[FloatArray, BoolArray]:
@@ -127,42 +131,38 @@ def phase_power(
     power factor where that tells, of the metered total kvar, else the assumption, at
     import only. A power factor left blank at a current under the floor is no load.
     """
-    unknown = np.full(v.shape, np.nan)
-    printed = readings.pf
-    if printed is None and readings.pf_total is not None:
-        printed = np.repeat(readings.pf_total[None, :], 3, axis=0)
-    metered_p = unknown if readings.p is None else readings.p
-    metered_q = unknown if readings.q is None else readings.q
+    printed = _first_of(readings.pf, _spread(readings.pf_total))
     reading = read_power_factor(
-        unknown if printed is None else printed,
+        np.full(v.shape, np.nan) if printed is None else printed,
         service.power_factor,
-        _first_known(metered_p, _spread(readings.p_total, unknown)),
+        _first_of(readings.p, _spread(readings.p_total)),
         readings.lead_lag,
-        _spread(readings.q_total, unknown),
+        _spread(readings.q_total),
     )
     s = _first_known(v * i, readings.s)
     by_pf = s * reading.magnitude * reading.direction
-    p = _first_known(metered_p, by_pf)
-    size, left_over = _reactive_size(readings, reading, s, p, metered_p)
+    p = _first_known(readings.p, by_pf)
+    size, left_over = _reactive_size(readings, reading, s, p)
     worked_out, assumed = _reactive(size, reading)
-    q = _first_known(metered_q, worked_out)
-    no_kvar = np.isnan(metered_q)
+    q = _first_known(readings.q, worked_out)
+    no_kvar = ~_known(readings.q, q)
     blank = np.zeros(v.shape, dtype=bool)
     if printed is not None:
-        blank = idle & np.isnan(printed) & np.isnan(metered_p)
+        blank = idle & np.isnan(printed) & ~_known(readings.p, p)
         p = np.where(blank, 0.0, p)
         q = np.where(blank & no_kvar, 0.0, q)
-    elif readings.p is None:
-        p, q = _shared(readings, s, p, q, reading)
-    mismatch = np.abs(metered_p - by_pf) > service.mismatch_fraction * s
+    elif readings.p is None and readings.p_total is not None:
+        p, q = _shared(readings, readings.p_total, s, service)
     flags = (
         reading.flags
         | flag_where(assumed & no_kvar & ~blank, Flag.LEAD_LAG_ASSUMED)
         | flag_where(left_over & no_kvar & ~np.isnan(q), Flag.Q_FROM_VOLT_AMPERES)
         | flag_where(blank, Flag.NO_LOAD)
         | flag_where(np.isnan(q) & ~np.isnan(p), Flag.Q_UNKNOWN)
-        | flag_where(mismatch, Flag.POWER_MISMATCH)
     )
+    if readings.p is not None:
+        mismatch = np.abs(readings.p - by_pf) > service.mismatch_fraction * s
+        flags |= flag_where(mismatch, Flag.POWER_MISMATCH)
     s = np.where(np.isnan(s) & ~blank, np.sqrt(p * p + q * q), s)
     return PhasePower(p, q, s, np.bitwise_or.reduce(flags, axis=0))
 
@@ -172,63 +172,65 @@ def _reactive_size(
     reading: PowerFactorReading,
     s: FloatArray,
     p: FloatArray,
-    metered_p: FloatArray,
 ) -> tuple[FloatArray, BoolArray]:
     """|Q| by power factor, else by what is left of S; and where V·I had to stand for S."""
     pf = reading.magnitude
-    size = np.where(
-        ~np.isnan(metered_p) & (pf > 0),
-        np.abs(p) * power.tangent_of_power_factor(pf),
-        power.reactive_power_from_power_factor(s, pf),
-    )
+    size = power.reactive_power_from_power_factor(s, pf)
+    if readings.p is not None:
+        by_angle = np.abs(p) * power.tangent_of_power_factor(pf)
+        size = np.where(~np.isnan(readings.p) & (pf > 0), by_angle, size)
     left_over = np.isnan(size) & ~np.isnan(p)
-    apparent = _first_known(readings.s, s)
-    size = np.where(left_over, power.reactive_power_from_apparent(apparent, p), size)
-    if readings.s is not None:
-        left_over &= np.isnan(readings.s)
-    return size, left_over
+    if left_over.any():
+        apparent = _first_known(readings.s, s)
+        size = np.where(left_over, power.reactive_power_from_apparent(apparent, p), size)
+    return size, left_over & ~_known(readings.s, s)
 
 
-def _spread(total: FloatArray | None, unknown: FloatArray) -> FloatArray:
+def _spread(total: FloatArray | None) -> FloatArray | None:
     """A total's value for each of the phases."""
-    return unknown if total is None else np.repeat(total[None, :], 3, axis=0)
+    return None if total is None else np.repeat(total[None, :], 3, axis=0)
+
+
+def _first_of(first: FloatArray | None, second: FloatArray | None) -> FloatArray | None:
+    """The first column, its holes filled by the second, where there are any at all."""
+    if first is None or second is None:
+        return second if first is None else first
+    return _first_known(first, second)
 
 
 def _shared(
-    readings: IntervalReadings,
-    s: FloatArray,
-    p: FloatArray,
-    q: FloatArray,
-    reading: PowerFactorReading,
+    readings: IntervalReadings, p_total: FloatArray, s: FloatArray, service: ServiceConstants
 ) -> tuple[FloatArray, FloatArray]:
     """Share metered totals over the phases as their V·I: one angle for all."""
-    if readings.p_total is None:
-        return p, q
-    total_q, _ = _total_reactive(readings, np.full_like(readings.p_total, np.nan), reading)
+    total_q, _ = _total_reactive(readings, np.full_like(p_total, np.nan), service)
     whole = s.sum(axis=0)
     with np.errstate(divide="ignore", invalid="ignore"):
         share = np.where(whole > 0, s / whole, np.nan)
-    return share * readings.p_total, _first_known(readings.q, share * total_q)
+    return share * p_total, _first_known(readings.q, share * total_q)
 
 
 def _total_reactive(
-    readings: IntervalReadings, of_phases: FloatArray, reading: PowerFactorReading
+    readings: IntervalReadings, of_phases: FloatArray, service: ServiceConstants
 ) -> tuple[FloatArray, FlagArray]:
     """Total Q: metered, else by the total's own power factor, else of the phases, else kVA."""
-    metered_p, unknown = readings.p_total, np.full_like(of_phases, np.nan)
-    one = PowerFactorReading(  # the three rows of a total's reading are the same
-        reading.magnitude[0],
-        reading.direction[0],
-        reading.sense[0],
-        reading.flags[0],
-        reading.assumed[0],
+    metered_p = readings.p_total
+    if metered_p is None:
+        q = _first_known(readings.q_total, of_phases)
+        return q, np.zeros(of_phases.shape, dtype=np.uint16)
+    unknown = np.full_like(of_phases, np.nan)
+    one = read_power_factor(
+        unknown if readings.pf_total is None else readings.pf_total,
+        service.power_factor,
+        metered_p,
+        None if readings.lead_lag is None else _agreed(readings.lead_lag),
+        readings.q_total,
     )
     by_pf = by_kva = unknown
     pf_assumed = kva_assumed = np.zeros(of_phases.shape, dtype=bool)
-    if metered_p is not None and readings.pf_total is not None:
+    if readings.pf_total is not None:
         tangent = power.tangent_of_power_factor(one.magnitude)
         by_pf, pf_assumed = _reactive(np.abs(metered_p) * tangent, one)
-    if metered_p is not None and readings.s_total is not None:
+    if readings.s_total is not None:
         size = power.reactive_power_from_apparent(readings.s_total, metered_p)
         by_kva, kva_assumed = _reactive(size, one)
     metered_q = unknown if readings.q_total is None else readings.q_total
@@ -240,6 +242,12 @@ def _total_reactive(
         Flag.LEAD_LAG_ASSUMED,
     )
     return q, flags
+
+
+def _agreed(lead_lag: FloatArray) -> FloatArray:
+    """The word of the three phases where all say the same."""
+    a, b, c = lead_lag
+    return np.where((a == b) & (b == c), a, np.nan)
 
 
 def total_power(
@@ -263,15 +271,8 @@ def total_power(
     carries = ~idle
     summed = power.total_where_carried(phases.p, carries)
     s = power.total_where_carried(phases.s, carries)
-    unknown = np.full(phases.p.shape, np.nan)
-    reading = read_power_factor(
-        _spread(readings.pf_total, unknown),
-        service.power_factor,
-        _spread(readings.p_total, unknown),
-        readings.lead_lag,
-        _spread(readings.q_total, unknown),
-    )
-    q, flags = _total_reactive(readings, power.total_where_carried(phases.q, carries), reading)
+    of_phases = power.total_where_carried(phases.q, carries)
+    q, flags = _total_reactive(readings, of_phases, service)
     p = _first_known(readings.p_total, summed)
     if readings.p_total is not None:
         flags = flags | flag_where(

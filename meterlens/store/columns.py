@@ -12,6 +12,7 @@ __all__ = [
     "DERIVED_FRACTIONS",
     "DERIVED_PHASES",
     "DERIVED_TOTALS",
+    "FURTHER_COLUMNS",
     "NUMBER",
     "READING_COLUMNS",
     "STORE_COLUMN",
@@ -58,6 +59,15 @@ STORE_COLUMN = {
 }
 
 READING_COLUMNS = tuple(STORE_COLUMN.values())
+
+#: Readings that few exports have, kept in one list column: their places in it, from 0. The
+#: statements name the same places from 1; a test compares them.
+FURTHER_COLUMNS = tuple(
+    name
+    for name in READING_COLUMNS
+    if name.startswith(("v_ab", "v_bc", "v_ca", "lead_lag", "p_metered", "q_metered", "s_metered"))
+    or name == "pf_exported_total"
+)
 
 #: Kernel field → (name pattern, divisor, stored as double), one column a phase.
 DERIVED_PHASES = {

@@ -27,6 +27,7 @@ from meterlens.store.columns import (
     DERIVED_FRACTIONS,
     DERIVED_PHASES,
     DERIVED_TOTALS,
+    FURTHER_COLUMNS,
     WATTS_PER_KILOWATT,
 )
 from meterlens.store.rows import UNCONTESTED, Rows
@@ -77,6 +78,9 @@ def _derived_types() -> dict[str, pa.DataType]:
 
 def table_schema(present: tuple[str, ...]) -> pa.Schema:
     """Arrow schema of rows of `reading` with those reading columns that are present."""
+    further = []
+    if any(name in FURTHER_COLUMNS for name in present):
+        further.append(("further", pa.list_(pa.float64())))
     return pa.schema(
         [
             ("service", pa.dictionary(pa.int8(), pa.string())),
@@ -86,7 +90,8 @@ def table_schema(present: tuple[str, ...]) -> pa.Schema:
             ("file_id", pa.int32()),
             ("line", pa.int32()),
             ("given", pa.int64()),
-            *((name, pa.float64()) for name in present),
+            *((name, pa.float64()) for name in present if name not in FURTHER_COLUMNS),
+            *further,
             *_derived_types().items(),
         ]
     )
@@ -151,13 +156,27 @@ def _record_batch(
     }
     column = dict(zip(rows.names, rows.values, strict=True))
     for name, x in column.items():
-        arrays[name] = _array(x)
+        if name not in FURTHER_COLUMNS:
+            arrays[name] = _array(x)
+    if "further" in schema.names:
+        arrays["further"] = _further(column, count)
     parts = [
         derive_intervals(_kernel_readings(column, count, slice(k, k + KERNEL_BATCH)), constants)
         for k in range(0, count, KERNEL_BATCH)
     ]
     arrays |= _derived_arrays(parts, count)
     return pa.record_batch([arrays[name] for name in schema.names], schema=schema)
+
+
+def _further(column: dict[str, FloatArray], count: int) -> pa.Array:
+    """The readings that few exports have as one list a row, up to the last that is there."""
+    width = 1 + max(k for k, name in enumerate(FURTHER_COLUMNS) if name in column)
+    cells = np.full((count, width), np.nan)
+    for place, name in enumerate(FURTHER_COLUMNS[:width]):
+        if name in column:
+            cells[:, place] = column[name]
+    offsets = np.arange(0, (count + 1) * width, width, dtype=np.int32)
+    return pa.ListArray.from_arrays(pa.array(offsets), _array(cells.ravel()))
 
 
 def _array(x: FloatArray) -> pa.Array:

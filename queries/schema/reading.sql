@@ -1,4 +1,6 @@
--- The one table of intervals: readings as printed and all that is derived from them.
+-- The one table of intervals: readings as printed and all that is derived from them. `further`
+-- holds the readings that few exports have, by their place: a column of its own for each would
+-- slow the writing of every other export.
 -- args: none
 -- row: one interval of one service
 create table if not exists reading (
@@ -12,9 +14,6 @@ create table if not exists reading (
     v_a double,
     v_b double,
     v_c double,
-    v_ab double,
-    v_bc double,
-    v_ca double,
     i_a double,
     i_b double,
     i_c double,
@@ -22,23 +21,7 @@ create table if not exists reading (
     pf_exported_a double,
     pf_exported_b double,
     pf_exported_c double,
-    pf_exported_total double,
-    lead_lag_a double,
-    lead_lag_b double,
-    lead_lag_c double,
-    lead_lag_total double,
-    p_metered_a_kw double,
-    p_metered_b_kw double,
-    p_metered_c_kw double,
-    q_metered_a_kvar double,
-    q_metered_b_kvar double,
-    q_metered_c_kvar double,
-    s_metered_a_kva double,
-    s_metered_b_kva double,
-    s_metered_c_kva double,
-    p_metered_kw double,
-    q_metered_kvar double,
-    s_metered_kva double,
+    further double[],
     p_a_kw double,
     p_b_kw double,
     p_c_kw double,

@@ -83,12 +83,19 @@ def test_conventions(
         assert rows == [pytest.approx([p, q, p, q, 3 * p, 3 * q], rel=1e-12)] * 2
 
 
-@pytest.mark.parametrize("word", ["lag", "LAG", "Lagging", "ind", "ind.", "inductive", " lag "])
-def test_words_for_lagging(tmp_path: Path, word: str) -> None:
-    """However it is written."""
+def test_words_for_lagging_and_leading(tmp_path: Path) -> None:
+    """However they are written."""
+    lagging = ["lag", "LAG", "Lagging", "ind", "ind.", "inductive", " lag "]
+    leading = ["lead", "Leading", "cap", "Cap.", "capacitive"]
     site = SmallSite(tmp_path).write(VALUES | PF | LEAD_LAG, pf_convention="sign-is-power-flow")
-    site.take(export(PF | LEAD_LAG, "0.8", word))
-    assert site.query("select q_a_kvar > 0 from interval_power") == [[True]] * 2
+    head, row, _ = export(PF | LEAD_LAG, "0.8", "WORD").splitlines()
+    rows = [
+        row.replace("T00:00", f"T{n:02d}:00").replace("WORD", word)
+        for n, word in enumerate(lagging + leading)
+    ]
+    assert counts(site.take("\n".join([head, *rows]))) == (12, 12, 0, 0, 0)
+    found = site.query("select q_a_kvar from interval_power order by start_utc")
+    assert [row[0] for row in found] == pytest.approx([LAG] * 7 + [LEAD] * 5)
 
 
 def test_word_that_is_neither(tmp_path: Path) -> None:
