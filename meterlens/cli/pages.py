@@ -69,6 +69,7 @@ def service_page(store: Store, service: Service) -> ServicePage:
         current_angle_grade=first["current_angle_grade"],
         timezone=site.timezone,
         connection=service.connection,
+        sense_assumed=service.columns is not None and service.columns.assume is not None,
     )
     findings = [f for month in months for f in month["findings"]]
     return ServicePage(

@@ -42,6 +42,8 @@ class ServiceFacts:
         What people call phases a, b, c.
     high_leg : str or None
         The high phase of a ``delta-4w`` service.
+    sense_assumed : bool
+        Whether lagging or leading is an assumption of the column map, not measured.
     """
 
     id: str
@@ -57,6 +59,7 @@ class ServiceFacts:
     current_angle_grade: str = "per-phase"
     phase_labels: tuple[str, str, str] = ("a", "b", "c")
     high_leg: str | None = None
+    sense_assumed: bool = False
 
 
 @dataclass(frozen=True)

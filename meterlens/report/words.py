@@ -8,6 +8,7 @@ from datetime import datetime
 from typing import Any, Final
 
 __all__ = [
+    "ASSUMED_SENSE",
     "CONNECTIONS",
     "CURRENT_GRADES",
     "PERIOD_KINDS",
@@ -20,12 +21,17 @@ __all__ = [
     "number",
     "percent",
     "plain",
+    "quantity",
+    "sense_words",
+    "share",
+    "size_words",
+    "small_percent",
     "wall_clock",
     "when",
 ]
 
 UNKNOWN: Final = "–"
-_THIN: Final = "\u202f"  # narrow no-break space: thousands that never wrap
+_TIE: Final = "\u00a0"  # no-break space: a number stays with its unit
 
 CONNECTIONS: Final[dict[str, str]] = {
     "wye-4w": "wye, four wires",
@@ -48,6 +54,15 @@ CURRENT_GRADES: Final[dict[str, str]] = {
     "equal": "No power factor was metered: the currents are taken 120° apart (grade: equal).",
 }
 
+_POWER_FACTORS: Final = {"low-pf", "leading"}
+_FINE_SHARES: Final = {"voltage-imbalance", "incomplete-month"}
+_COUNTED: Final = {"rows", "values", "intervals"}
+
+ASSUMED_SENSE: Final = (
+    "The exports do not say whether the load lags or leads: the sign is an assumption of the "
+    "column map, so a load of the other kind cannot be seen here."
+)
+
 PERIOD_KINDS: Final[dict[str, str]] = {
     "low-pf": "Power factor below target",
     "leading": "Leading",
@@ -59,7 +74,7 @@ PERIOD_KINDS: Final[dict[str, str]] = {
 
 
 def number(value: Any, digits: int | None = None) -> str:
-    """Write a number with a thin space every three digits; unknown as a dash.
+    """Write a number with a comma every three digits; unknown as a dash.
 
     Parameters
     ----------
@@ -74,7 +89,7 @@ def number(value: Any, digits: int | None = None) -> str:
     if digits is None:
         size = 0 if amount == 0 else math.floor(math.log10(abs(amount)))
         digits = max(0, min(4, 2 - size))
-    text = f"{amount:,.{digits}f}".replace(",", _THIN)
+    text = f"{amount:,.{digits}f}"
     # A rounded nothing is written without its sign.
     return text.lstrip("-") if float(f"{amount:.{digits}f}") == 0 else text.replace("-", "−")
 
@@ -83,7 +98,53 @@ def percent(value: Any, digits: int = 1) -> str:
     """Write a fraction as per cent; unknown as a dash."""
     if value is None or not math.isfinite(float(value)):
         return UNKNOWN
-    return f"{number(float(value) * 100, digits)}{_THIN}%"
+    return f"{number(float(value) * 100, digits)}%"
+
+
+def share(value: Any, digits: int = 2) -> str:
+    """Write how complete something is: only what is exactly complete says 100%."""
+    if value is None or not math.isfinite(float(value)):
+        return UNKNOWN
+    part = float(value)
+    if part >= 1 - 1e-9:  # sums of minutes may end a hair's breadth below 1
+        return "100%"
+    scale = 10**digits
+    return percent(min(part, (100 - 1 / scale) / 100), digits)
+
+
+def small_percent(value: float) -> str:
+    """Write a share above nothing that may be tiny, never as 0.0%."""
+    return "less than 0.1%" if 0 < value < 0.001 else percent(value)
+
+
+def quantity(value: Any, unit: str, digits: int | None = None) -> str:
+    """Write a number and its unit so that they stay on one line; unknown as a dash."""
+    text = number(value, digits)
+    return text if text == UNKNOWN else f"{text}{_TIE}{unit}"
+
+
+def size_words(kind: Any, value: Any, unit: Any) -> str:
+    """Write the size of a finding or period in the manner of its sentence.
+
+    Power factors keep three decimals, other fractions become per cent, voltages per unit
+    keep three decimals, and what is counted is whole.
+    """
+    if value is None:
+        return UNKNOWN
+    if kind in _POWER_FACTORS:
+        return number(value, 3)
+    if unit in ("fraction", "", None):
+        return percent(value, 2 if kind in _FINE_SHARES else 1)
+    if unit == "pu":
+        return quantity(value, "pu", 3)
+    return quantity(value, str(unit), 0 if unit in _COUNTED else None)
+
+
+def sense_words(hours: Any, *, assumed: bool) -> str:
+    """Write the hours of leading load; an assumption is never stated as a measurement."""
+    if not assumed:
+        return quantity(hours, "h", 1)
+    return f"{quantity(hours, 'h', 1)}, by assumption" if hours else "not measured"
 
 
 def plain(text: Any) -> str:

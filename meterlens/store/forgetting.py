@@ -1,7 +1,7 @@
 """Taking one file's readings out again, and restoring what it had written over.
 
 Most rows of a file are its own alone and simply go. Where other lines wrote to the same
-interval, its versions are folded anew without those of the file.
+interval, or said the same again, its versions are folded anew without those of the file.
 """
 
 from __future__ import annotations
@@ -9,17 +9,16 @@ from __future__ import annotations
 import numpy as np
 
 from meterlens.settings import Service
-from meterlens.store import derivation
 from meterlens.store.database import Store
 from meterlens.store.merge import merge_rows
-from meterlens.store.rows import Rows, Superseded, column_bits, given_bits
-from meterlens.store.tables import stored_rows, superseded_table, written_rows
-from meterlens.store.zones import ZoneTable
+from meterlens.store.rows import UNCONTESTED, Rows, column_bits, given_bits
+from meterlens.store.tables import stored_rows, written_rows
+from meterlens.store.writing import write_merge
 
 __all__ = ["remove_file"]
 
 
-def remove_file(store: Store, service: Service, file_id: int, zone: ZoneTable) -> None:
+def remove_file(store: Store, service: Service, file_id: int) -> None:
     """Take one file's readings out of the store, within the caller's transaction.
 
     Parameters
@@ -29,47 +28,46 @@ def remove_file(store: Store, service: Service, file_id: int, zone: ZoneTable) -
     service : Service
     file_id : int
         As in the view `file`.
-    zone : ZoneTable
-        Offsets of the site's clock over the readings.
     """
-    versions = stored_rows(store, "ingest/contested_version", service=service.id, file_id=file_id)
+    keys = {"service": service.id, "file_id": file_id}
+    versions = stored_rows(store, "ingest/contested_version", **keys)
+    repeats = store.rows("ingest/contested_repeat", **keys)
     contested = np.unique(versions.start)
     if len(contested):
-        for query in ("ingest/remove_reading_at", "ingest/remove_superseded_at"):
-            written_rows(store, query, service.id, contested)
-    store.run("ingest/remove_reading_of_file", service=service.id, file_id=file_id)
-    if len(contested):
-        _fold_anew(store, service, versions, file_id, zone)
-    store.run("ingest/remove_rejected", file_id=file_id)
-    store.run("ingest/remove_file", file_id=file_id)
+        for table in ("reading", "superseded", "repeated"):
+            written_rows(store, f"ingest/remove_{table}_at", service.id, contested)
+    store.run("ingest/remove_reading_of_file", **keys)
+    left = _own_values(versions, [tuple(row.values()) for row in repeats])
+    left = left.take(left.file_id != file_id)
+    if len(left.start):
+        write_merge(store, service, merge_rows(Rows.empty(), left))
+    for table in ("rejected", "repeated", "file"):
+        store.run(f"ingest/remove_{table}", file_id=file_id)
 
 
-def _fold_anew(
-    store: Store, service: Service, versions: Rows, file_id: int, zone: ZoneTable
-) -> None:
-    """Let the remaining versions meet again, each with the values its own line gave."""
-    left = versions.take(versions.file_id != file_id)
-    if len(left.start) == 0:
-        return
-    bits = np.where(left.given < 0, given_bits(left), left.given)
-    own = (bits & column_bits(left.names)) != 0
-    left.values = np.where(own, left.values, np.nan)
-    left.given[:] = -1
-    merge = merge_rows(Rows.empty(), left)
-    _keep(store, service, merge.superseded, zone)
-    batches = derivation.derived_batches(merge.written, service, zone)
-    store.con.register("derived_row", batches)
-    try:
-        store.run("ingest/add_reading")
-    finally:
-        store.con.unregister("derived_row")
+def _own_values(versions: Rows, repeats: list[tuple[int, int, int, int]]) -> Rows:
+    """Every version and repeat with the values that its own line gave, oldest first.
 
-
-def _keep(store: Store, service: Service, superseded: Superseded, zone: ZoneTable) -> None:
-    if len(superseded.by_line) == 0:
-        return
-    store.con.register("superseded_row", superseded_table(superseded, service.id, zone))
-    try:
-        store.run("ingest/add_superseded")
-    finally:
-        store.con.unregister("superseded_row")
+    A repeat had what stood in the store when it came: the values of the last version
+    before it.
+    """
+    bits = np.where(versions.given == UNCONTESTED, given_bits(versions), versions.given)
+    keys = list(
+        zip(versions.start.tolist(), versions.file_id.tolist(), versions.line.tolist(), strict=True)
+    )
+    source, given = list(range(len(keys))), bits.tolist()
+    file_id, line = versions.file_id.tolist(), versions.line.tolist()
+    place = 0
+    for start, repeating, at_line, had in repeats:
+        while place + 1 < len(keys) and keys[place + 1] < (start, repeating, at_line):
+            place += 1
+        source.append(place)
+        given.append(had)
+        file_id.append(repeating)
+        line.append(at_line)
+    rows = versions.take(np.array(source, dtype=np.int64))
+    rows.file_id, rows.line = np.array(file_id, dtype=np.int64), np.array(line, dtype=np.int64)
+    own = (np.array(given, dtype=np.int64) & column_bits(rows.names)) != 0
+    rows.values = np.where(own, rows.values, np.nan)
+    rows.given = np.full(len(source), UNCONTESTED, dtype=np.int64)
+    return rows.take(np.lexsort((rows.line, rows.file_id, rows.start)))

@@ -2,17 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
 import numpy as np
-import pyarrow as pa
 
 from meterlens.settings import Service, map_digest
-from meterlens.store import derivation
 from meterlens.store.columns import READING_COLUMNS
 from meterlens.store.database import Store, stale_services, write_settings
 from meterlens.store.export_rows import ExportRows, Reject
@@ -20,9 +17,10 @@ from meterlens.store.export_text import opened_export
 from meterlens.store.forgetting import remove_file
 from meterlens.store.merge import Merge, Outcome, merge_rows
 from meterlens.store.reading import column_map_of, read_rows
-from meterlens.store.rows import UNCONTESTED, Rows, Superseded
-from meterlens.store.tables import stored_rows, superseded_table, written_rows
-from meterlens.store.zones import MICROSECONDS_PER_MINUTE, ZoneTable, zone_table
+from meterlens.store.rows import UNCONTESTED, Rows
+from meterlens.store.tables import stored_rows
+from meterlens.store.writing import keep_rejects, write_derived, write_merge
+from meterlens.store.zones import MICROSECONDS_PER_MINUTE
 
 __all__ = ["FileOutcome", "ingest_file", "rederive", "refresh"]
 
@@ -84,7 +82,7 @@ def ingest_file(store: Store, file: Path, service: Service) -> FileOutcome:
     with store.transaction():
         notes = list(rows.notes)
         for earlier in known:
-            remove_file(store, service, int(earlier["file_id"]), _zone(store, rows.start_utc))
+            remove_file(store, service, int(earlier["file_id"]))
             notes.append("the column map changed: the file's earlier readings were taken out")
         outcome = _store_rows(store, file, service, rows, digest)
         write_settings(store)
@@ -116,7 +114,7 @@ def _store_rows(
     file_id = int(store.rows("ingest/next_file_id")[0]["file_id"])
     incoming = _incoming(rows, file_id)
     merge = merge_rows(_stored_near(store, service, incoming), incoming)
-    _write(store, service, merge)
+    write_merge(store, service, merge)
     rejects = rows.row_rejects + _overlap_rejects(rows, merge)
     rejects.sort(key=lambda reject: reject.line)
     counts = np.bincount(merge.outcome, minlength=len(Outcome)).tolist()
@@ -132,7 +130,7 @@ def _store_rows(
         values_clamped=rows.values_clamped,
         rejects=sorted(rejects + rows.value_rejects, key=lambda r: (r.line, r.column or "")),
     )
-    _keep_rejects(store, file_id, outcome.rejects)
+    keep_rejects(store, file_id, outcome.rejects)
     store.run(
         "ingest/add_file",
         file_id=file_id,
@@ -180,62 +178,6 @@ def _stored_near(store: Store, service: Service, incoming: Rows) -> Rows:
         from_utc=int(incoming.start.min()) - reach,
         until_utc=int(incoming.start.max()) + reach,
     )
-
-
-def _zone(store: Store, start: np.ndarray[Any, np.dtype[np.int64]]) -> ZoneTable:
-    if len(start) == 0:
-        return zone_table(store.site.timezone, 2000, 2000)
-    years = np.array([start.min(), start.max()]).astype("datetime64[us]").astype("datetime64[Y]")
-    first, last = (years.astype(int) + 1970).tolist()
-    return zone_table(store.site.timezone, first, last)
-
-
-def _write(store: Store, service: Service, merge: Merge) -> None:
-    _keep_superseded(store, service, merge.superseded)
-    if len(merge.rewritten_start):
-        written_rows(store, "ingest/remove_reading_at", service.id, merge.rewritten_start)
-    if len(merge.written.start):
-        write_derived(store, service, merge.written)
-
-
-def write_derived(store: Store, service: Service, rows: Rows) -> None:
-    """Derive rows of one service, in order of start, and write them."""
-    batches = derivation.derived_batches(rows, service, _zone(store, rows.start))
-    store.con.register("derived_row", batches)
-    try:
-        store.run("ingest/add_reading")
-    finally:
-        store.con.unregister("derived_row")
-
-
-def _keep_superseded(store: Store, service: Service, superseded: Superseded) -> None:
-    if len(superseded.by_line) == 0:
-        return
-    zone = _zone(store, superseded.rows.start)
-    store.con.register("superseded_row", superseded_table(superseded, service.id, zone))
-    try:
-        store.run("ingest/add_superseded")
-    finally:
-        store.con.unregister("superseded_row")
-
-
-def _keep_rejects(store: Store, file_id: int, rejects: Sequence[Reject]) -> None:
-    if not rejects:
-        return
-    table = pa.table(
-        {
-            "file_id": pa.array([file_id] * len(rejects), pa.int32()),
-            "line": pa.array([r.line for r in rejects], pa.int32()),
-            "column_name": pa.array([r.column for r in rejects], pa.string()),
-            "reason": pa.array([r.reason for r in rejects], pa.string()),
-            "text": pa.array([r.text for r in rejects], pa.string()),
-        }
-    )
-    store.con.register("rejected_row", table)
-    try:
-        store.run("ingest/add_rejected")
-    finally:
-        store.con.unregister("rejected_row")
 
 
 def _overlap_rejects(rows: ExportRows, merge: Merge) -> list[Reject]:

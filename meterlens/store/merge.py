@@ -42,12 +42,15 @@ class Merge:
     rewritten_start : IntArray
         Starts of stored rows that `written` takes the place of.
     superseded : Superseded
+    repeated : Rows
+        Duplicate rows of another file than the one whose row they repeat.
     """
 
     outcome: npt.NDArray[np.int8]
     written: Rows
     rewritten_start: IntArray
     superseded: Superseded
+    repeated: Rows
 
 
 def merge_rows(stored: Rows, incoming: Rows) -> Merge:
@@ -71,7 +74,9 @@ def merge_rows(stored: Rows, incoming: Rows) -> Merge:
     """
     outcome = np.full(len(incoming.start), Outcome.STORED, dtype=np.int8)
     if len(stored.start) == 0 and (orderly := _all_new(incoming)) is not None:
-        return Merge(outcome, orderly, np.empty(0, dtype=np.int64), _joined([], incoming.names))
+        none = np.empty(0, dtype=np.int64)
+        nothing = Rows.empty(incoming.names)
+        return Merge(outcome, orderly, none, _joined([], incoming.names), nothing)
     names = tuple(n for n in READING_COLUMNS if n in incoming.names or n in stored.names)
     stored, incoming = stored.with_columns(names), incoming.with_columns(names)
     rejected = _overlapping(stored, incoming)
@@ -87,16 +92,18 @@ def merge_rows(stored: Rows, incoming: Rows) -> Merge:
     was_stored = occupied.copy()
     dirty = np.zeros(len(slots), dtype=bool)
     versions: list[Superseded] = []
+    repeats: list[Rows] = []
     for turn in range(int(rank.max()) + 1 if len(rank) else 0):
         chosen = rank == turn
         rows, slot = incoming.take(order[chosen]), slot_of[chosen]
-        result = _meet(state, occupied, dirty, rows, slot, versions)
+        result = _meet(state, occupied, dirty, rows, slot, versions, repeats)
         outcome[order[chosen]] = result
     return Merge(
         outcome=outcome,
         written=state.take(dirty),
         rewritten_start=slots[dirty & was_stored],
         superseded=_joined(versions, names),
+        repeated=Rows.joined(repeats, names),
     )
 
 
@@ -153,6 +160,7 @@ def _meet(
     rows: Rows,
     slot: IntArray,
     versions: list[Superseded],
+    repeats: list[Rows],
 ) -> npt.NDArray[np.int8]:
     """One row a start against what stands there; returns the outcomes."""
     result = np.full(len(slot), Outcome.STORED, dtype=np.int8)
@@ -174,6 +182,7 @@ def _meet(
     versions.append(
         Superseded(old.take(touched), rows.file_id[touched], rows.line[touched], changes[touched])
     )
+    repeats.append(rows.take(~touched & (old.file_id != rows.file_id)))
     rows.given = given_bits(rows)
     rows.values = np.where(has_new, rows.values, old.values)
     _assign(state, slot[touched], rows.take(touched))

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from meterlens.store.zones import MICROSECONDS_PER_MINUTE, IntArray, ZoneTable, zone_table
+from meterlens.store.zones import MICROSECONDS_PER_MINUTE, IntArray, ZoneTable, zone_over
 
 __all__ = [
     "NOT_A_TIME",
@@ -104,9 +104,7 @@ def read_stamps(
     if clock in ("utc", "offset") or len(printed) == 0:
         instant = printed.copy()
     else:
-        years = np.array([printed.min(), printed.max()]).astype("datetime64[us]")
-        first, last = (years.astype("datetime64[Y]").astype(int) + 1970).tolist()
-        table = zone_table(zone_name, first, last)
+        table = zone_over(zone_name, printed)
         if clock == "local-standard":
             instant = printed - table.standard_offset_at(printed) * MICROSECONDS_PER_MINUTE
         else:
@@ -152,46 +150,56 @@ def _by_continuity(
 ) -> IntArray:
     """Which of its two instants each repeated stamp is, by the rows around it.
 
-    `step` is signed: negative for a file that runs backward. Three rounds: forward from
-    the last decided row, backward from the next one, and the place where the printed
-    clock falls back inside a run of undecided rows.
+    `step` is signed: negative for a file that runs backward. Each unbroken run of such
+    rows takes the reading in which the fewest rows fail to advance by one interval; of
+    equals, the one that holds longest in the file's own direction. A row that fits both
+    ways alike is left undecided.
     """
     chosen = np.where(repeated, NOT_A_TIME, instant)
     rows = np.flatnonzero(repeated)
-    breaks = np.flatnonzero(np.diff(rows) > 1) + 1
-    for run in np.split(rows, breaks):
-        before, after = int(run[0]) - 1, int(run[-1]) + 1
-        _decide_in_turn(run, before, chosen, early, late, step)
-        _decide_in_turn(run[::-1], after, chosen, early, late, -step)
-        if (chosen[run] == NOT_A_TIME).any():
-            _decide_by_fall(run, chosen, early, late, step)
+    for run in np.split(rows, np.flatnonzero(np.diff(rows) > 1) + 1):
+        _decide_run(run, chosen, early, late, step)
     return chosen
 
 
-def _decide_in_turn(
-    run: IntArray, neighbour: int, chosen: IntArray, early: IntArray, late: IntArray, step: int
-) -> None:
-    """Decide rows that stand one interval on from the last decided row before them."""
-    last = chosen[neighbour] if 0 <= neighbour < len(chosen) else NOT_A_TIME
-    for row in run:
-        if chosen[row] == NOT_A_TIME and last != NOT_A_TIME:
-            expected = last + step
-            if expected in (early[row], late[row]):
-                chosen[row] = expected
-        if chosen[row] != NOT_A_TIME:
-            last = chosen[row]
+#: Steps that are off, then where they are (an earlier one is the higher bit): less is better.
+_Misfit = tuple[int, int]
 
 
-def _decide_by_fall(
+def _decide_run(
     run: IntArray, chosen: IntArray, early: IntArray, late: IntArray, step: int
 ) -> None:
-    """Use the one place where the printed clock runs against the file's direction."""
-    forward = np.sign(step)
-    falls = np.flatnonzero(np.diff(late[run]) * forward < 0)
-    if len(falls) != 1:
-        return
-    first, second = run[: falls[0] + 1], run[falls[0] + 1 :]
-    before, after = (first, second) if forward > 0 else (second, first)
-    for rows, instants in ((before, early), (after, late)):
-        undecided = rows[chosen[rows] == NOT_A_TIME]
-        chosen[undecided] = instants[undecided]
+    """Shortest path through the two readings of each row, from both ends."""
+    count = len(run)
+    states = [(int(early[row]), int(late[row])) for row in run]
+    before, after = int(run[0]) - 1, int(run[-1]) + 1
+    first = int(chosen[before]) if before >= 0 else NOT_A_TIME
+    last = int(chosen[after]) if after < len(chosen) else NOT_A_TIME
+
+    def misfit(one: int, following: int, place: int) -> _Misfit:
+        if NOT_A_TIME in (one, following) or following - one == step:
+            return 0, 0
+        backward = (following - one) * step < 0
+        return 2 if backward else 1, 1 << (count - place)
+
+    def best(options: list[tuple[_Misfit, _Misfit]]) -> _Misfit:
+        return min((a[0] + b[0], a[1] | b[1]) for a, b in options)
+
+    forward = [[misfit(first, state, 0) for state in states[0]]]
+    for k in range(1, count):
+        forward.append(
+            [
+                best([(forward[-1][s], misfit(states[k - 1][s], to, k)) for s in (0, 1)])
+                for to in states[k]
+            ]
+        )
+    onward = [misfit(state, last, count) for state in states[-1]]
+    for k in range(count - 1, -1, -1):
+        as_early, as_late = (best([(forward[k][s], onward[s])]) for s in (0, 1))
+        if as_early != as_late:
+            chosen[run[k]] = states[k][0 if as_early < as_late else 1]
+        if k:
+            onward = [
+                best([(misfit(state, states[k][s], k), onward[s]) for s in (0, 1)])
+                for state in states[k - 1]
+            ]

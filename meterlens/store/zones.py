@@ -15,7 +15,14 @@ from zoneinfo import ZoneInfo
 import numpy as np
 import numpy.typing as npt
 
-__all__ = ["MICROSECONDS_PER_MINUTE", "IntArray", "ZoneTable", "site_zone", "zone_table"]
+__all__ = [
+    "MICROSECONDS_PER_MINUTE",
+    "IntArray",
+    "ZoneTable",
+    "site_zone",
+    "zone_over",
+    "zone_table",
+]
 
 IntArray = npt.NDArray[np.int64]
 
@@ -106,6 +113,15 @@ def zone_table(name: str, first_year: int, last_year: int) -> ZoneTable:
         np.array([(s - _EPOCH) // timedelta(microseconds=1) for s in starts], dtype=np.int64),
         np.array([o // timedelta(minutes=1) for o in offsets], dtype=np.int64),
     )
+
+
+def zone_over(name: str, start: IntArray) -> ZoneTable:
+    """The table of a zone that covers these instants."""
+    if len(start) == 0:
+        return zone_table(name, 2000, 2000)
+    ends = np.array([start.min(), start.max()]).astype("datetime64[us]").astype("datetime64[Y]")
+    first, last = (ends.astype(int) + 1970).tolist()
+    return zone_table(name, first, last)
 
 
 def _offset(zone: ZoneInfo, instant: datetime) -> timedelta:

@@ -1,11 +1,21 @@
 -- Every version, earlier and present, of the intervals that a file and another line both wrote.
 -- args: $service, $file_id
--- row: one version of one interval, oldest first; the present one comes last
+-- row: one version of one interval in the order of its files and lines, the present one last
 with contested as (
     select distinct start_utc
     from superseded_reading
     where service = $service
         and (file_id = $file_id or by_file_id = $file_id)
+    union
+    select start_utc
+    from repeated_reading
+    where service = $service
+        and start_utc in (
+            select start_utc
+            from reading
+            where service = $service
+                and file_id = $file_id
+        )
 )
 select
     epoch_us(start_utc) as start_us,
@@ -42,9 +52,7 @@ select
     s_metered_c_kva,
     p_metered_kw,
     q_metered_kvar,
-    s_metered_kva,
-    by_file_id,
-    by_line
+    s_metered_kva
 from superseded_reading
 where service = $service
     and start_utc in (select start_utc from contested)
@@ -84,10 +92,8 @@ select
     further[17] as s_metered_c_kva,
     further[18] as p_metered_kw,
     further[19] as q_metered_kvar,
-    further[20] as s_metered_kva,
-    2147483647 as by_file_id,
-    0 as by_line
+    further[20] as s_metered_kva
 from reading
 where service = $service
     and start_utc in (select start_utc from contested)
-order by start_us, by_file_id, by_line;
+order by start_us, file_id, line;
