@@ -66,7 +66,8 @@ class MeterlensError(Exception):
         parts = [f"{place}: " if place else ""]
         if self.key is not None:
             parts.append(f"{self.key}: ")
-        parts.append(self.message)
+        ended = self.message.endswith((".", "!", "?"))
+        parts.append(self.message if ended or not self.hint else f"{self.message}.")
         if self.hint:
             parts.append(f" {self.hint}")
         return "".join(parts)

@@ -63,7 +63,10 @@ def say(text: str = "") -> None:
 
 def print_json(document: dict[str, Any]) -> None:
     """One JSON document on stdout; nothing that is not a number passes for one."""
-    text = json.dumps(document, ensure_ascii=False, allow_nan=False, indent=1, default=_plain)
+    readable = (sys.stdout.encoding or "ascii").lower().startswith("utf")
+    text = json.dumps(
+        document, ensure_ascii=not readable, allow_nan=False, indent=1, default=_plain
+    )
     sys.stdout.write(text + "\n")
 
 

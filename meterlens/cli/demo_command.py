@@ -7,7 +7,7 @@ from pathlib import Path
 
 import click
 
-from meterlens.cli.console import phase_labels, print_json, say
+from meterlens.cli.console import phase_labels, print_json, say, tell
 from meterlens.errors import RequestError
 from meterlens.settings import load_site
 
@@ -38,8 +38,8 @@ def demo(folder: Path, as_json: bool) -> None:
     copy_demo(folder)
     site = load_site(folder)
     work = [(f, s) for s in site.services for f in store_commands.listed_files(site, s)]
-    outcomes = store_commands.ingest_all(site, work)
-    with open_current_store(site, say) as store:
+    outcomes, _ = store_commands.ingest_all(site, work)
+    with open_current_store(site, tell) as store:
         checked = check_services(store)
         reviewed = review_months(store)
         found = find_periods(store)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import sys
 from importlib import import_module
+from io import TextIOWrapper
 
 import click
 
@@ -77,8 +78,18 @@ def program() -> None:
 
 def main() -> None:
     """Run the program; an error that ends a command is one message and exit code 1."""
+    for stream in (sys.stdout, sys.stderr):
+        # A terminal that lacks a letter shows a mark for it, and the command goes on.
+        if isinstance(stream, TextIOWrapper):
+            stream.reconfigure(errors="replace")
     try:
         program()
     except MeterlensError as error:
         print(f"meterlens: {error}", file=sys.stderr)
+        sys.exit(1)
+    except (KeyboardInterrupt, RuntimeError) as error:
+        # The database answers Ctrl-C with an error of its own.
+        if isinstance(error, RuntimeError) and "nterrupt" not in str(error):
+            raise
+        print("meterlens: interrupted; the store is as it was", file=sys.stderr)
         sys.exit(1)

@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import asdict
+from itertools import chain
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import click
 
@@ -17,8 +19,11 @@ from meterlens.cli.console import (
     site_options,
     tell,
 )
-from meterlens.errors import ExportError, RequestError
+from meterlens.errors import ExportError, RequestError, SettingsError
 from meterlens.settings import Service, Site, write_new_site
+
+if TYPE_CHECKING:
+    from meterlens.store.ingest import FileOutcome
 
 __all__ = ["export", "ingest", "ingest_all", "init", "query"]
 
@@ -50,36 +55,57 @@ def ingest(site: Site, as_json: bool, files: tuple[Path, ...], service_id: str |
     is in the store already changes nothing.
     """
     work = _work(site, files, service_id)
-    outcomes = ingest_all(site, work)
+    outcomes, failures = ingest_all(site, work)
+    if not outcomes and failures:
+        raise failures[0]
     if as_json:
         print_json(
             {
                 "files": [outcome_json(outcome) for outcome in outcomes],
                 "notes": [
-                    {"key": "file", "file": outcome.file, "reason": note}
-                    for outcome in outcomes
-                    for note in outcome.notes
+                    *(
+                        {"key": "file", "file": outcome.file, "reason": note}
+                        for outcome in outcomes
+                        for note in outcome.notes
+                    ),
+                    *({"key": "file", "file": f.file, "reason": str(f)} for f in failures),
                 ],
             }
         )
-        return
-    print_ingest(outcomes)
+    else:
+        print_ingest(outcomes)
+    if failures:
+        for failure in failures[1:]:
+            tell(str(failure))
+        raise failures[0]
 
 
-def ingest_all(site: Site, work: list[tuple[Path, Service]]) -> list[Any]:
-    """Read files into the store one after another, with progress."""
+def ingest_all(
+    site: Site, work: list[tuple[Path, Service]]
+) -> tuple[list[FileOutcome], list[ExportError]]:
+    """Read files into the store one after another; one that cannot be read stops no other.
+
+    Returns
+    -------
+    tuple of lists
+        What became of the files that were read, and why the others were not.
+    """
     from meterlens.store.database import open_store
     from meterlens.store.ingest import ingest_file, refresh
 
-    outcomes = []
+    outcomes: list[FileOutcome] = []
+    failures: list[ExportError] = []
     with open_store(site, write=True) as store, progress_over("reading", len(work)) as advance:
         refreshed = refresh(store)
         if refreshed:
             tell(f"settings or formulas changed: derived {', '.join(refreshed)} anew")
         for file, service in work:
-            outcomes.append(ingest_file(store, file, service))
+            try:
+                outcomes.append(ingest_file(store, file, service))
+            except ExportError as error:
+                failures.append(error)
             advance(file.name)
-    return outcomes
+    return outcomes, failures
 
 
 def _work(
@@ -96,7 +122,8 @@ def _work(
     work = [(file, service) for service in services for file in listed_files(site, service)]
     if not work:
         raise RequestError(
-            "no export matches the services' files patterns",
+            "no export matches the services' files patterns"
+            + "".join(f', "{p}"' for s in services for p in s.files),
             file=site.file,
             key="files",
             hint='Set files = ["exports/*.csv"] for a service, or name the files.',
@@ -106,7 +133,16 @@ def _work(
 
 def listed_files(site: Site, service: Service) -> list[Path]:
     """The exports that a service's patterns name, in order of name."""
-    found = {path for pattern in service.files for path in site.folder.glob(pattern)}
+    found: set[Path] = set()
+    for pattern in service.files:
+        whole = Path(pattern)
+        start = Path(whole.anchor) if whole.anchor else site.folder
+        try:
+            found.update(start.glob(str(whole.relative_to(whole.anchor))))
+        except (ValueError, NotImplementedError) as error:
+            raise SettingsError(
+                f'"{pattern}" is no file pattern ({error})', file=site.file, key="service.files"
+            ) from None
     return sorted(path for path in found if path.is_file())
 
 
@@ -126,7 +162,7 @@ def _owner(site: Site, file: Path) -> Service:
     raise click.UsageError(f"which service is {file} of? Give --service ID; ids: {ids}")
 
 
-def outcome_json(outcome: Any) -> dict[str, Any]:
+def outcome_json(outcome: FileOutcome) -> dict[str, Any]:
     """One file's outcome as the interface has it."""
     document: dict[str, Any] = asdict(outcome)
     document.pop("notes")
@@ -134,7 +170,7 @@ def outcome_json(outcome: Any) -> dict[str, Any]:
     return document
 
 
-def print_ingest(outcomes: list[Any]) -> None:
+def print_ingest(outcomes: list[FileOutcome]) -> None:
     """A table of files and what became of their rows."""
     headings = ["file", "read", "stored", "replaced", "duplicate", "rejected", "values"]
     keys = ("rows_read", "rows_stored", "rows_replaced", "rows_duplicate", "rows_rejected")
@@ -177,9 +213,17 @@ def query(site: Site, as_json: bool, question: str, settings: tuple[str, ...]) -
     with open_current_store(site, tell) as store:
         names, rows = answer(store, question, parameters)
     if as_json:
-        print_json({"columns": names, "rows": [list(row) for row in rows], "notes": []})
+        finite = [[None if _is_not_finite(x) else x for x in row] for row in rows]
+        lost = sum(map(_is_not_finite, chain.from_iterable(rows)))
+        notes = [{"key": "rows", "reason": f"{lost} values are not finite numbers"}] if lost else []
+        print_json({"columns": names, "rows": finite, "notes": notes})
         return
     print_rows(names, rows)
+
+
+def _is_not_finite(x: object) -> bool:
+    """JSON has no word for infinity or for what is not a number."""
+    return isinstance(x, float) and not math.isfinite(x)
 
 
 def _parameter(text: str) -> tuple[str, str]:

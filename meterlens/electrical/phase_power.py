@@ -136,7 +136,7 @@ def phase_power(
         np.full(v.shape, np.nan) if printed is None else printed,
         service.power_factor,
         _first_of(readings.p, _spread(readings.p_total)),
-        readings.lead_lag,
+        _first_of(readings.lead_lag, _spread(readings.lead_lag_total)),
         _spread(readings.q_total),
     )
     s = _first_known(v * i, readings.s)
@@ -163,7 +163,7 @@ def phase_power(
     if readings.p is not None:
         mismatch = np.abs(readings.p - by_pf) > service.mismatch_fraction * s
         flags |= flag_where(mismatch, Flag.POWER_MISMATCH)
-    s = np.where(np.isnan(s) & ~blank, np.sqrt(p * p + q * q), s)
+    s = np.where(np.isnan(s) & ~blank, power.apparent_power_vector(p, q), s)
     return PhasePower(p, q, s, np.bitwise_or.reduce(flags, axis=0))
 
 
@@ -222,7 +222,10 @@ def _total_reactive(
         unknown if readings.pf_total is None else readings.pf_total,
         service.power_factor,
         metered_p,
-        None if readings.lead_lag is None else _agreed(readings.lead_lag),
+        _first_of(
+            readings.lead_lag_total,
+            None if readings.lead_lag is None else _agreed(readings.lead_lag),
+        ),
         readings.q_total,
     )
     by_pf = by_kva = unknown
@@ -281,5 +284,5 @@ def total_power(
         )
     flags = flags | flag_where(np.isnan(q) & ~np.isnan(p), Flag.Q_UNKNOWN)
     flags |= flag_where(np.isnan(p), Flag.INCOMPLETE)
-    s_vector = _first_known(np.sqrt(p * p + q * q), readings.s_total)
+    s_vector = _first_known(power.apparent_power_vector(p, q), readings.s_total)
     return TotalPower(p, q, s_vector, _first_known(s, readings.s_total), flags)

@@ -8,7 +8,9 @@ from meterlens.electrical.conventions import PF_CLAMP_BOUND, BoolArray, FloatArr
 
 __all__ = [
     "apparent_power_effective",
+    "apparent_power_vector",
     "power_factor",
+    "power_factor_of_totals",
     "reactive_power_from_apparent",
     "reactive_power_from_power_factor",
     "tangent_of_power_factor",
@@ -83,6 +85,51 @@ def tangent_of_power_factor(magnitude: FloatArray) -> FloatArray:
     pf = np.asarray(magnitude, dtype=np.float64)
     with np.errstate(divide="ignore"):
         return np.asarray(np.sqrt((1.0 - pf) * (1.0 + pf)) / pf)
+
+
+def apparent_power_vector(p: FloatArray, q: FloatArray) -> FloatArray:
+    """Vector apparent power.
+
+    Parameters
+    ----------
+    p, q : FloatArray
+        Total active and reactive power, W and var; or energies, kWh and kvarh.
+
+    Returns
+    -------
+    FloatArray
+        √(P² + Q²), VA (or kVAh).
+
+    References
+    ----------
+    IEEE Std 1459-2010, 3.2.2.6.
+    """
+    return np.asarray(np.sqrt(p * p + q * q))
+
+
+def power_factor_of_totals(p: float | None, q: float | None) -> float | None:
+    """Power factor of total powers, or of the energies of a month or a period.
+
+    Parameters
+    ----------
+    p, q : float or None
+        kW and kvar, or kWh and net kvarh; None where not known.
+
+    Returns
+    -------
+    float or None
+        P/√(P² + Q²), dimensionless, signed as P; None where either is not known or both
+        are zero.
+
+    Notes
+    -----
+    With energies this is the average power factor of tariffs. A power factor is never
+    averaged.
+    """
+    if p is None or q is None:
+        return None
+    s = float(apparent_power_vector(np.array(p), np.array(q)))
+    return p / s if s > 0 else None
 
 
 def power_factor(p: FloatArray, s: FloatArray, known: BoolArray) -> FloatArray:

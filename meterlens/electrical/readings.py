@@ -47,6 +47,8 @@ class IntervalReadings:
         Shape (3, n): line-to-line voltages ab, bc, ca, V.
     lead_lag : FloatArray or None
         Shape (3, n): +1 lagging, -1 leading, NaN where not told.
+    lead_lag_total : FloatArray or None
+        Shape (n,): the same, one word for the three phases.
     pf_total, p_total, q_total, s_total : FloatArray or None
         Shape (n,): one value for the three phases.
     """
@@ -59,6 +61,7 @@ class IntervalReadings:
     s: FloatArray | None = None
     v_line: FloatArray | None = None
     lead_lag: FloatArray | None = None
+    lead_lag_total: FloatArray | None = None
     pf_total: FloatArray | None = None
     p_total: FloatArray | None = None
     q_total: FloatArray | None = None

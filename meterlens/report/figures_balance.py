@@ -19,7 +19,7 @@ from meterlens.report.theme import (
     time_axis,
 )
 from meterlens.report.traces import line_traces
-from meterlens.report.words import CURRENT_GRADES, VOLTAGE_GRADES, number, percent
+from meterlens.report.words import CURRENT_GRADES, VOLTAGE_GRADES, number, percent, small_percent
 
 __all__ = ["imbalance", "impedance", "voltage"]
 
@@ -69,7 +69,7 @@ def imbalance(record: Record) -> Figure:
             yaxis=ref,
         )
         p95 = float(np.nanquantile(grid.column(name), 0.95))
-        words.append(f"{topic} imbalance is under {percent(p95, 2)} for 95 % of the points")
+        words.append(f"{topic} imbalance is under {percent(p95, 2)} for 95% of the points")
     last = "y" if len(shown) == 1 else "y2"
     layout["xaxis"] = time_axis(*grid.span, anchor=last)
     caption = ""
@@ -219,8 +219,8 @@ def _impedance_words(record: Record, cut: float) -> str:
     ).rstrip()
     if cut > 0:
         words += (
-            f" Light load makes impedance soar, so each axis is cut: up to {percent(cut)} of the "
-            "points of a panel lie outside."
+            " Light load makes impedance soar, so each axis is cut: up to "
+            f"{small_percent(cut)} of the points of a panel lie outside."
         )
     return words + thinning_words(record.grid, "the median of its intervals")
 

@@ -21,7 +21,7 @@ from meterlens.report.theme import (
     time_axis,
 )
 from meterlens.report.traces import line_traces
-from meterlens.report.words import CURRENT_GRADES, local_ms, number, percent
+from meterlens.report.words import ASSUMED_SENSE, CURRENT_GRADES, local_ms, number, percent
 
 __all__ = ["currents", "load", "power_factor"]
 
@@ -70,6 +70,8 @@ def load(record: Record, months: list[dict[str, Any]]) -> Figure:
         f"totals. A diamond marks each month’s peak demand in kW, the highest complete {window}-"
         "minute window, at the window’s start."
     ) + thinning_words(grid, "the mean of its intervals, which hides the shortest peaks")
+    if record.service.sense_assumed:
+        caption += f" {ASSUMED_SENSE}"
     top = np.nanmax(grid.column("p_kw")) if grid.has("p_kw") else None
     label = f"Line chart of active, reactive and apparent power; highest point {number(top)} kW."
     return Figure("load", title, caption, label, traces, layout)
@@ -177,7 +179,7 @@ def power_factor(record: Record) -> Figure:
     )
     low = min(float(np.quantile(drawn, 0.005)) - 0.02, target - 1.08)
     high = max(float(np.quantile(drawn, 0.995)) + 0.02, 0.06)
-    outside = float(np.mean((drawn < low) | (drawn > high)))
+    outside = int(np.count_nonzero((drawn < low) | (drawn > high)))
     line, note = limit_line(target - 1, f"target {target:g} lagging")
     if target - 1 > -0.06:
         note |= {"yanchor": "top", "yshift": -1}
@@ -199,7 +201,12 @@ def power_factor(record: Record) -> Figure:
         " Below the light-load floor there is no power factor, and none is drawn."
     )
     if outside > 0:
-        caption += f" The axis leaves out the outermost {percent(outside, 1)} of the points."
+        caption += (
+            f" The axis leaves out the {number(outside, 0)} outermost of {number(len(drawn), 0)} "
+            "points."
+        )
+    if record.service.sense_assumed:
+        caption += f" {ASSUMED_SENSE}"
     caption += thinning_words(grid, "its power factor comes from the sums of P and Q")
     label = (
         f"Line chart of power factor; {percent(below)} of the points are lagging and below "

@@ -13,7 +13,7 @@ import polars as pl
 from meterlens.report.facts import ServiceFacts
 from meterlens.report.record import Record
 from meterlens.report.theme import Figure, Json, axis, pack, plot_layout, tag, time_axis
-from meterlens.report.words import PERIOD_KINDS, local_ms, number, percent, plain, when
+from meterlens.report.words import PERIOD_KINDS, local_ms, number, plain, share, size_words, when
 
 __all__ = ["coverage", "day_shares", "periods"]
 
@@ -58,7 +58,9 @@ def periods(record: Record, entries: list[dict[str, Any]]) -> Figure:
     layout["margin"] = {"l": 18, "r": 18, "t": 8, "b": 48}
     caption = (
         "A period is an unbroken run of intervals of one kind. Each bar runs from its start to "
-        "its end in local time; kinds and limits are those of the review."
+        "its end in local time; kinds and limits are those of the review. Only runs count that "
+        "pass the limit at which a period begins, the load floor and the shortest length, so "
+        "their hours are mostly fewer than the month’s hours below target or leading."
     )
     if len(kept) < len(entries):
         caption += f" The {len(kept)} longest of {len(entries)} periods are drawn."
@@ -88,7 +90,7 @@ def _bars(record: Record, row: int, kind: str, bars: list[dict[str, Any]]) -> Js
         if phase:
             parts.append(plain(names.get(str(phase), phase)))
         if e.get("worst") is not None:
-            parts.append(f"worst {number(e['worst'])} {plain(e.get('unit') or '')}".rstrip())
+            parts.append(f"worst {plain(size_words(kind, e['worst'], e.get('unit')))}")
         words.append("<br>".join(parts))
     return {
         "type": "bar",
@@ -142,7 +144,7 @@ def _day_minutes(day: date, zone: ZoneInfo) -> float:
 
 def coverage(record: Record, frame: pl.DataFrame) -> Figure:
     """Draw a calendar, a month a row and a day a cell, of how complete the record is."""
-    title = "Coverage"
+    title = "Data coverage"
     shares = day_shares(record.service, frame)
     if not shares:
         return Figure("coverage", title, "", "", linked=False, missing="There are no intervals.")
@@ -150,10 +152,10 @@ def coverage(record: Record, frame: pl.DataFrame) -> Figure:
     rows: list[list[float | None]] = [[None] * 31 for _ in months]
     texts = [[""] * 31 for _ in months]
     place = {month: row for row, month in enumerate(months)}
-    for day, share in shares.items():
+    for day, part in shares.items():
         row = place[day.year, day.month]
-        rows[row][day.day - 1] = round(share, 4)
-        texts[row][day.day - 1] = f"{day.isoformat()}: {percent(share)} present"
+        rows[row][day.day - 1] = round(part, 4)
+        texts[row][day.day - 1] = f"{day.isoformat()}: {share(part)} covered"
     trace: Json = {
         "type": "heatmap",
         "z": rows,
@@ -181,7 +183,7 @@ def coverage(record: Record, frame: pl.DataFrame) -> Figure:
         showlegend=False,
     )
     layout["margin"] = {"l": 70, "r": 18, "t": 30, "b": 40}
-    short = sum(1 for share in shares.values() if share < 1)
+    short = sum(1 for part in shares.values() if part < 1)
     caption = (
         "Each cell is a local day: green-blue when every minute has a total active power, amber "
         "when some are missing, red when most or all are. Days of a clock change have 23 or 25 "

@@ -23,10 +23,11 @@ from plotly.offline import get_plotlyjs  # type: ignore[import-untyped]
 from meterlens.errors import RequestError
 from meterlens.report import figures_balance, figures_load, figures_plane, figures_record, tables
 from meterlens.report.facts import ServiceFacts, ServicePage
+from meterlens.report.findings_table import all_findings, count_words, findings_table
+from meterlens.report.months_tables import months_tables
 from meterlens.report.record import lay_out
 from meterlens.report.summaries import (
     Summary,
-    distinct,
     fact_list,
     newest,
     page_name,
@@ -34,7 +35,7 @@ from meterlens.report.summaries import (
     summarise,
 )
 from meterlens.report.theme import CONFIG, DARK, LIGHT, Figure
-from meterlens.report.words import CURRENT_GRADES, VOLTAGE_GRADES
+from meterlens.report.words import ASSUMED_SENSE, CURRENT_GRADES, VOLTAGE_GRADES
 
 __all__ = ["ServiceFacts", "ServicePage", "page_name", "write_pages"]
 
@@ -160,7 +161,6 @@ def _service_text(page: ServicePage, common: dict[str, str], *, single_file: boo
     service, script = page.service, _asset("page.js")
     library = get_plotlyjs() if single_file else ""
     figures = _figures(page)
-    findings = distinct([*page.findings, *(page.check.get("findings") or [])])
     return (
         _environment()
         .get_template("service.html.j2")
@@ -170,8 +170,9 @@ def _service_text(page: ServicePage, common: dict[str, str], *, single_file: boo
             facts=fact_list(service),
             month=newest(page.months).get("month"),
             readouts=readouts_of(page),
-            findings=tables.findings_table(findings, service, common["currency"]),
-            months=tables.months_table(page.months, service, common["currency"]),
+            counts=count_words(all_findings(page)),
+            findings=findings_table(page, common["currency"]),
+            months=months_tables(page.months, service, common["currency"]),
             periods=tables.periods_table(page.periods, service),
             gaps=tables.gaps_table(page.check),
             record=tables.record_words(page.check),
@@ -179,6 +180,7 @@ def _service_text(page: ServicePage, common: dict[str, str], *, single_file: boo
             grades=[
                 VOLTAGE_GRADES.get(service.angle_grade, service.angle_grade),
                 CURRENT_GRADES.get(service.current_angle_grade, service.current_angle_grade),
+                *([ASSUMED_SENSE] if service.sense_assumed else []),
             ],
             figures=figures,
             specs={

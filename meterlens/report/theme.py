@@ -238,7 +238,7 @@ def plot_layout(height: int, **more: Any) -> Json:
             "bgcolor": "@paper",
         },
         "showlegend": True,
-        "separators": ". ",
+        "separators": ".,",
         "uirevision": "keep",
         "dragmode": "zoom",
     }

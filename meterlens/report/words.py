@@ -137,7 +137,9 @@ def size_words(kind: Any, value: Any, unit: Any) -> str:
         return percent(value, 2 if kind in _FINE_SHARES else 1)
     if unit == "pu":
         return quantity(value, "pu", 3)
-    return quantity(value, str(unit), 0 if unit in _COUNTED else None)
+    if unit in _COUNTED:
+        return quantity(value, unit.removesuffix("s") if value == 1 else unit, 0)
+    return quantity(value, str(unit))
 
 
 def sense_words(hours: Any, *, assumed: bool) -> str:

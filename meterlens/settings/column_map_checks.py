@@ -155,6 +155,12 @@ def clock(name: str, pattern: str | None) -> None:
     """Check that the clock and the timestamp format tell the same story."""
     if pattern is None:
         return
+    if pattern == "epoch":
+        if name != "utc":
+            raise fault(
+                "seconds since 1970 are UTC by definition", key="clock", hint='Write clock = "utc".'
+            )
+        return
     if name == "offset" and "%z" not in pattern:
         raise fault(
             'clock = "offset" needs a format that reads the offset',

@@ -104,13 +104,26 @@ def open_store(site: Site, *, write: bool = False) -> Iterator[Store]:
     path = site.store
     if not write and not path.exists():
         raise StoreError("there is no store yet", file=path, hint='Run "meterlens ingest" first.')
+    fresh = not path.exists()
     con = _connect(path, read_only=not write)
+    store = Store(site, con, write)
     try:
-        store = Store(site, con, write)
         _check_edition(store)
         yield store
     finally:
+        empty = fresh and _holds_nothing(store)
         con.close()
+        if empty:  # a first ingest that stored nothing leaves nothing behind
+            path.unlink(missing_ok=True)
+            path.with_name(path.name + ".wal").unlink(missing_ok=True)
+
+
+def _holds_nothing(store: Store) -> bool:
+    """True where no file was read into the store; False where it cannot be told."""
+    try:
+        return not store.rows("ingest/service_with_rows")
+    except duckdb.Error:
+        return False
 
 
 def _connect(path: Path, *, read_only: bool) -> duckdb.DuckDBPyConnection:
@@ -204,8 +217,7 @@ def stale_services(store: Store) -> list[str]:
     return [
         row["service"]
         for row in setting_rows.service_rows(store.site)
-        if row["service"] in known
-        and kept.get(row["service"], row["derivation_digest"]) != row["derivation_digest"]
+        if row["service"] in known and kept.get(row["service"]) != row["derivation_digest"]
     ]
 
 

@@ -28,6 +28,8 @@ from meterlens.store.columns import (
     DERIVED_PHASES,
     DERIVED_TOTALS,
     FURTHER_COLUMNS,
+    READING_COLUMNS,
+    STORE_COLUMN,
     WATTS_PER_KILOWATT,
 )
 from meterlens.store.rows import UNCONTESTED, Rows
@@ -115,6 +117,12 @@ def derived_batches(rows: Rows, service: Service, zone: ZoneTable) -> pa.RecordB
         Whole row groups; the kernel runs ahead on its own threads while the reader's
         consumer writes.
     """
+    # A mapped column that is blank all through still is a column: what it means does not
+    # depend on how many rows are derived at once.
+    mapped = _mapped_columns(service)
+    rows = rows.with_columns(
+        tuple(name for name in READING_COLUMNS if name in rows.names or name in mapped)
+    )
     schema = table_schema(rows.names)
     constants = service_constants(service)
 
@@ -133,6 +141,13 @@ def derived_batches(rows: Rows, service: Service, zone: ZoneTable) -> pa.RecordB
                 yield future.result()
 
     return pa.RecordBatchReader.from_batches(schema, batches())
+
+
+def _mapped_columns(service: Service) -> set[str]:
+    if service.columns is None:
+        return set()
+    named = service.columns.value_columns() | service.columns.text_columns()
+    return {STORE_COLUMN[key] for key in named if key in STORE_COLUMN}
 
 
 def _record_batch(
@@ -196,9 +211,10 @@ def _kernel_readings(column: dict[str, FloatArray], count: int, part: slice) -> 
         return stacked if factor == 1.0 else stacked * factor
 
     def total(name: str, factor: float = 1.0) -> FloatArray | None:
-        return column[name][part] * factor if name in column else None
+        if name not in column:
+            return None
+        return column[name][part] if factor == 1.0 else column[name][part] * factor
 
-    total_sense = _lead_lag(column, part)
     readings = IntervalReadings(
         v=phases("v_{}", "a b c"),
         i=phases("i_{}", "a b c"),
@@ -207,7 +223,8 @@ def _kernel_readings(column: dict[str, FloatArray], count: int, part: slice) -> 
         q=phases("q_metered_{}_kvar", "a b c", WATTS_PER_KILOWATT),
         s=phases("s_metered_{}_kva", "a b c", WATTS_PER_KILOWATT),
         v_line=phases("v_{}", "ab bc ca"),
-        lead_lag=phases("lead_lag_{}", "a b c") if total_sense is None else total_sense,
+        lead_lag=phases("lead_lag_{}", "a b c"),
+        lead_lag_total=total("lead_lag_total"),
         pf_total=total("pf_exported_total"),
         p_total=total("p_metered_kw", WATTS_PER_KILOWATT),
         q_total=total("q_metered_kvar", WATTS_PER_KILOWATT),
@@ -217,13 +234,6 @@ def _kernel_readings(column: dict[str, FloatArray], count: int, part: slice) -> 
         # Rows with a metered neutral alone still are intervals.
         return IntervalReadings(v=np.stack([missing] * len(_PHASES)))
     return readings
-
-
-def _lead_lag(column: dict[str, FloatArray], part: slice) -> FloatArray | None:
-    """One word for the total stands for all three phases."""
-    if "lead_lag_total" not in column:
-        return None
-    return np.repeat(column["lead_lag_total"][None, part], 3, axis=0)
 
 
 def _derived_arrays(parts: list[IntervalQuantities], count: int) -> dict[str, pa.Array]:

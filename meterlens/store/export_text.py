@@ -1,4 +1,4 @@
-"""An export's bytes: fingerprint, encoding, line ends and quotes.
+"""An export's text: its encoding, its line ends, its quotes, and its first lines.
 
 The reader proper takes whole lines of UTF-8 with one kind of line end and no quotes.
 Exports that are otherwise are rewritten once into a temporary file; line numbers stay
@@ -8,9 +8,10 @@ those of the file as it is.
 from __future__ import annotations
 
 import codecs
-import csv
-import hashlib
 import io
+import os
+import shutil
+import stat
 from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass, field
@@ -20,6 +21,14 @@ from tempfile import TemporaryDirectory
 import numpy as np
 
 from meterlens.errors import ExportError
+from meterlens.store.byte_scan import (
+    LINE_SEPARATOR,
+    ByteScan,
+    find_encoding,
+    mark_encoding,
+    scan,
+)
+from meterlens.store.quotes import quoted_records, usual_field_count
 from meterlens.store.zones import IntArray
 
 __all__ = ["FIELD_SEPARATOR", "ExportText", "opened_export"]
@@ -27,11 +36,12 @@ __all__ = ["FIELD_SEPARATOR", "ExportText", "opened_export"]
 FIELD_SEPARATOR = "\x1f"
 _CHUNK = 1 << 20
 _HEAD_BYTES = 1 << 17
-_BOMS = (
-    (codecs.BOM_UTF8, "utf-8-sig"),
-    (codecs.BOM_UTF16_LE, "utf-16"),
-    (codecs.BOM_UTF16_BE, "utf-16"),
-)
+#: Where lines are long, more of them is read until there are so many, but not without end.
+_HEAD_LINES = 40
+_HEAD_BYTES_AT_MOST = 1 << 22
+_SAMPLE_LINES = 500
+#: The database would take a path with one of these for a pattern.
+_PATTERN_CHARACTERS = frozenset("*?[]{}")
 
 
 @dataclass
@@ -43,7 +53,7 @@ class ExportText:
     file : Path
         The export itself, for messages.
     lines_path : Path
-        What the line reader reads: the export, or its rewritten form.
+        What the line reader reads: the export, a link to it, or its rewritten form.
     size_bytes : int
     sha256 : str
         Of the export's own bytes.
@@ -53,6 +63,8 @@ class ExportText:
         Whether such a character stands anywhere in it.
     head : list of str
         The first lines, as they are.
+    notes : list of str
+        What was found out about its text.
     delimiter : str or None
         Set to `FIELD_SEPARATOR` once quotes were taken out.
     line_numbers : IntArray or None
@@ -67,39 +79,39 @@ class ExportText:
     has_quotes: bool
     has_underscore: bool
     head: list[str]
+    folder: Path = field(repr=False)
+    notes: list[str] = field(default_factory=list)
     delimiter: str | None = None
     line_numbers: IntArray | None = None
-    folder: Path | None = field(default=None, repr=False)
+
+    def head_records(self, delimiter: str) -> list[tuple[int, list[str]]]:
+        """1-based line and fields of the first records, split at a delimiter."""
+        if not self.has_quotes:
+            return [(n, line.split(delimiter)) for n, line in enumerate(self.head, 1)]
+        lines = (line + "\n" for line in self.head)
+        return list(quoted_records(lines, delimiter, self._usual_field_count(delimiter)))
 
     def without_quotes(self, delimiter: str) -> None:
         """Rewrite a quoted export with unquoted fields, one record a line."""
         if not self.has_quotes:
             self.delimiter = delimiter
             return
-        assert self.folder is not None
         target = self.folder / "unquoted.txt"
+        usual = self._usual_field_count(delimiter)
         numbers: list[int] = []
-        previous = 0
         with (
-            self.lines_path.open(encoding="utf-8", newline="") as source,
-            target.open("w", encoding="utf-8", newline="") as sink,
+            self.lines_path.open(encoding="utf-8-sig", newline=None) as source,
+            target.open("w", encoding="utf-8", newline="\n") as sink,
         ):
-            reader = csv.reader(source, delimiter=delimiter)
-            try:
-                for record in reader:
-                    numbers.append(previous + 1)
-                    previous = reader.line_num
-                    clean = (f.replace("\n", " ").replace("\r", " ") for f in record)
-                    sink.write(FIELD_SEPARATOR.join(clean) + "\n")
-            except csv.Error as error:
-                raise ExportError(
-                    f"a quoted field cannot be read ({error})",
-                    file=self.file,
-                    line=reader.line_num,
-                ) from None
+            for number, record in quoted_records(source, delimiter, usual):
+                numbers.append(number)
+                sink.write(FIELD_SEPARATOR.join(record).replace("\n", " ") + "\n")
         self.lines_path = target
         self.delimiter = FIELD_SEPARATOR
         self.line_numbers = np.array(numbers, dtype=np.int64)
+
+    def _usual_field_count(self, delimiter: str) -> int:
+        return usual_field_count(self.head[:_SAMPLE_LINES], delimiter)
 
 
 @contextmanager
@@ -116,12 +128,11 @@ def opened_export(file: Path, encoding: str | None) -> Iterator[ExportText]:
     Raises
     ------
     ExportError
-        Not there, a folder, empty, binary, or not in the encoding that the map names.
+        Not there, no regular file, empty, binary, or not in the encoding that the map names.
     """
     try:
-        size = file.stat().st_size
-        if file.is_dir():
-            raise ExportError("is a folder, not an export", file=file)
+        status = file.stat()
+        _check_kind(file, status.st_mode)
         with file.open("rb") as source:
             head = source.read(_HEAD_BYTES)
     except FileNotFoundError:
@@ -130,70 +141,99 @@ def opened_export(file: Path, encoding: str | None) -> Iterator[ExportText]:
         raise ExportError(f"cannot be read ({error.strerror})", file=file) from None
     if not head.strip():
         raise ExportError("is empty", file=file, hint="Export it from the meter again.")
-    found = next((name for bom, name in _BOMS if head.startswith(bom)), None)
-    if found != "utf-16" and encoding not in ("utf-16", "utf-32") and b"\0" in head:
-        raise ExportError("is binary, not text", file=file, hint="Export the readings as CSV text.")
+    marked = mark_encoding(head)
+    if b"\0" in head and not _is_wide(encoding or marked or "utf-8"):
+        raise ExportError(
+            "is binary, not text",
+            file=file,
+            hint="Export the readings as CSV text; name the encoding where that is UTF-16.",
+        )
     with TemporaryDirectory(prefix="meterlens-") as name:
-        yield _inspect(file, size, encoding or found, Path(name))
+        yield _inspect(file, status.st_size, (encoding, marked), Path(name))
 
 
-def _inspect(file: Path, size: int, encoding: str | None, folder: Path) -> ExportText:
-    """One pass over the bytes: hash, line ends, quotes, and whether they are UTF-8."""
-    digest = hashlib.sha256()
-    decoder = codecs.getincrementaldecoder("utf-8")()
-    is_utf8 = True
-    quotes = underscore = False
-    carriage = line_feed = paired = 0
-    last = b""
-    with file.open("rb") as source:
-        while chunk := source.read(_CHUNK):
-            digest.update(chunk)
-            quotes = quotes or b'"' in chunk
-            underscore = underscore or b"_" in chunk
-            line_feed += chunk.count(b"\n")
-            if b"\r" in chunk or last == b"\r":
-                carriage += chunk.count(b"\r")
-                paired += chunk.count(b"\r\n") + (last == b"\r" and chunk[:1] == b"\n")
-            last = chunk[-1:]
-            if is_utf8 and not chunk.isascii():
-                try:
-                    decoder.decode(chunk)
-                except UnicodeDecodeError:
-                    is_utf8 = False
-    chosen = encoding or ("utf-8" if is_utf8 else "cp1252")
-    mixed = carriage not in (0, paired) or (paired > 0 and line_feed != paired)
-    only_carriage = carriage > 0 and line_feed == 0
-    plain = codecs.lookup(chosen).name in ("utf-8", "ascii") and is_utf8
-    lines_path = file
-    if not plain or (mixed and not only_carriage):
-        lines_path = _rewritten(file, chosen, folder / "lines.txt")
+def _check_kind(file: Path, mode: int) -> None:
+    """Refuse what is no file of bytes, before anything waits for a pipe."""
+    if stat.S_ISDIR(mode):
+        raise ExportError("is a folder, not an export", file=file)
+    if not stat.S_ISREG(mode):
+        raise ExportError(
+            "is no regular file", file=file, hint="Save the export into a file first."
+        )
+
+
+def _is_wide(encoding: str) -> bool:
+    """True for encodings whose plain letters have bytes of zero."""
+    return codecs.lookup(encoding).name.startswith(("utf-16", "utf-32"))
+
+
+def _inspect(
+    file: Path, size: int, encodings: tuple[str | None, str | None], folder: Path
+) -> ExportText:
+    """Read the bytes once; rewrite the export where the line reader could not take it."""
+    named, marked = encodings
+    scanned = scan(file)
+    chosen, note = named or marked, None
+    if chosen is None:
+        chosen, note = find_encoding(file, scanned)
+    elif named is None and chosen != "utf-8-sig":
+        note = f"read as {chosen}"
+    elif named is None and not scanned.is_utf8:
+        note = "read as UTF-8, although some bytes of it cannot be: shown as \ufffd"
+    lines_path = _lines_path(file, chosen, scanned, folder, strict=named is not None)
     if file.stat().st_size != size:
         raise ExportError(
             "changed while it was being read", file=file, hint="Ingest it again when it is whole."
         )
-    text = ExportText(
+    return ExportText(
         file=file,
         lines_path=lines_path,
         size_bytes=size,
-        sha256=digest.hexdigest(),
+        sha256=scanned.sha256,
         encoding=chosen,
-        has_quotes=quotes,
-        has_underscore=underscore,
-        head=[],
+        has_quotes=scanned.has_quotes,
+        has_underscore=scanned.has_underscore,
+        head=_head_lines(file, lines_path),
         folder=folder,
+        notes=[] if note is None else [note],
     )
-    text.head = _head_lines(lines_path)
-    return text
 
 
-def _rewritten(file: Path, encoding: str, target: Path) -> Path:
+def _lines_path(
+    file: Path, encoding: str, scanned: ByteScan, folder: Path, *, strict: bool
+) -> Path:
+    """The export itself where the line reader can take it; else a link or a rewritten form."""
+    is_plain = codecs.lookup(encoding).name in ("utf-8", "utf-8-sig", "ascii") and scanned.is_utf8
+    if not is_plain or scanned.has_mixed_ends or scanned.has_separator:
+        return _rewritten(file, encoding, folder / "lines.txt", strict=strict)
+    place = file.absolute()
+    return _linked(place, folder / "link") if _PATTERN_CHARACTERS & set(str(place)) else place
+
+
+def _linked(file: Path, target: Path) -> Path:
+    """Another name for a file; a copy where the disk knows no links."""
+    for link in (os.symlink, os.link):
+        try:
+            link(file, target)
+        except (OSError, NotImplementedError):
+            continue
+        return target
+    shutil.copyfile(file, target)
+    return target
+
+
+def _rewritten(file: Path, encoding: str, target: Path, *, strict: bool) -> Path:
+    """UTF-8 with plain line ends. A found encoding lets broken bytes pay for themselves."""
+    errors = "strict" if strict else "replace"
     try:
         with (
-            file.open(encoding=encoding, newline=None) as source,
+            file.open(encoding=encoding, errors=errors, newline=None) as source,
             target.open("w", encoding="utf-8", newline="\n") as sink,
         ):
+            first = source.read(1)
+            sink.write(first.removeprefix("\ufeff").replace(LINE_SEPARATOR, " "))
             while chunk := source.read(_CHUNK):
-                sink.write(chunk)
+                sink.write(chunk.replace(LINE_SEPARATOR, " "))
     except UnicodeError as error:
         raise ExportError(
             f"is not {encoding} text ({error})",
@@ -204,10 +244,22 @@ def _rewritten(file: Path, encoding: str, target: Path) -> Path:
     return target
 
 
-def _head_lines(path: Path) -> list[str]:
+def _head_lines(file: Path, path: Path) -> list[str]:
+    """The first lines: of a usual export some hundreds, of one with long lines fewer."""
+    limit = _HEAD_BYTES
     with path.open("rb") as source:
-        head = source.read(_HEAD_BYTES)
-    whole = len(head) < _HEAD_BYTES
+        head = source.read(limit)
+        while len(head) == limit < _HEAD_BYTES_AT_MOST and len(head.splitlines()) <= _HEAD_LINES:
+            head += source.read(limit)
+            limit *= 2
+    whole = len(head) < limit
     text = head.decode("utf-8", errors="ignore").removeprefix("\ufeff")
     lines = io.StringIO(text, newline=None).read().split("\n")
+    if not whole and len(lines) == 1:
+        raise ExportError(
+            f"its first line is longer than {_HEAD_BYTES_AT_MOST >> 20} MiB",
+            file=file,
+            line=1,
+            hint="Export the readings as CSV text, one interval a line.",
+        )
     return lines if whole else lines[:-1]

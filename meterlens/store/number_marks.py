@@ -8,7 +8,7 @@ from pathlib import Path
 
 from meterlens.errors import ExportError
 
-__all__ = ["find_decimal", "find_thousands", "grouped_pattern"]
+__all__ = ["assumed_point", "find_decimal", "find_thousands", "grouped_pattern"]
 
 
 def grouped_pattern(thousands: str, decimal: str) -> str:
@@ -44,6 +44,22 @@ def _only_decimal(cell: str, mark: str) -> bool:
     """True where the mark cannot be one of thousands."""
     whole, _, rest = cell.lstrip("+-").partition(mark)
     return len(rest) != 3 or len(whole) > 3 or whole == "0" or whole.startswith("0")
+
+
+def assumed_point(cells: Sequence[str]) -> str | None:
+    """A number whose point could group thousands as well, where nothing tells.
+
+    Notes
+    -----
+    Where every number has a point and three digits after it, it is a meter of three
+    decimals; where some have none, large numbers may be the ones that are grouped.
+    """
+    points = [c for c in cells if re.fullmatch(r"[+-]?\d+\.\d+", c)]
+    plain = [c for c in cells if re.fullmatch(r"[+-]?\d+", c)]
+    if not points or not plain or any(_only_decimal(c, ".") for c in points):
+        return None
+    # A number of four digits without a point shows that thousands are not grouped.
+    return None if any(len(c.lstrip("+-")) > 3 for c in plain) else points[0]
 
 
 def find_thousands(cells: Sequence[str], decimal: str, delimiter: str) -> str | None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from contextlib import suppress
 from difflib import get_close_matches
 from pathlib import Path
 from typing import Any
@@ -126,7 +127,8 @@ def write_view(store: Store, view: str, out: Path) -> int:
             relation.write_parquet(str(unfinished), compression="zstd")
         unfinished.replace(out)
     except (OSError, duckdb.Error) as error:
-        unfinished.unlink(missing_ok=True)
+        with suppress(OSError):
+            unfinished.unlink(missing_ok=True)
         first = str(error).strip().splitlines()[0]
         raise RequestError(f"cannot be written ({first})", file=out) from None
     row = relation.aggregate("count(*)").fetchall()

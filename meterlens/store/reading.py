@@ -77,6 +77,7 @@ def _printed_rows(
         "time_field": layout.time_fields[0],
         "time_field_2": layout.time_fields[1] if len(layout.time_fields) > 1 else None,
         "time_format": list(formats),
+        "offset_rule": layout.offset_rule,
         "is_epoch": formats == ("epoch",),
         "decimal_mark": layout.decimal,
         "grouped_pattern": layout.grouped_pattern,

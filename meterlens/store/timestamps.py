@@ -42,10 +42,13 @@ class StampReading:
         time does not exist or cannot be told from its twin.
     fault : ndarray of uint8
         0, or a key of `OUTCOME_REASONS`.
+    either_way : int
+        Rows of a repeated hour that fit both its passes as well, read as the first.
     """
 
     start_utc: IntArray
     fault: npt.NDArray[np.uint8]
+    either_way: int = 0
 
 
 def infer_interval_min(printed: IntArray) -> float | None:
@@ -101,6 +104,7 @@ def read_stamps(
     """
     fault = np.zeros(len(printed), dtype=np.uint8)
     step = interval_min * MICROSECONDS_PER_MINUTE
+    either_way = 0
     if clock in ("utc", "offset") or len(printed) == 0:
         instant = printed.copy()
     else:
@@ -108,15 +112,15 @@ def read_stamps(
         if clock == "local-standard":
             instant = printed - table.standard_offset_at(printed) * MICROSECONDS_PER_MINUTE
         else:
-            instant, fault = _from_local(printed, table, step, stamp == "end")
+            instant, fault, either_way = _from_local(printed, table, step, stamp == "end")
     if stamp == "end":
         instant = np.where(instant == NOT_A_TIME, NOT_A_TIME, instant - step)
-    return StampReading(instant, fault)
+    return StampReading(instant, fault, either_way)
 
 
 def _from_local(
     printed: IntArray, table: ZoneTable, step: int, end_stamps: bool
-) -> tuple[IntArray, npt.NDArray[np.uint8]]:
+) -> tuple[IntArray, npt.NDArray[np.uint8], int]:
     """Local readings to UTC; the few rows in a repeated hour go by continuity."""
     shift = table.offset_min * MICROSECONDS_PER_MINUTE
     segment = np.searchsorted(table.start + shift, printed, side="right") - 1
@@ -136,40 +140,49 @@ def _from_local(
     edge = repeated & (early == begun)
     instant = np.where(skipped, NOT_A_TIME, late)
     fault[skipped] = 1
+    either_way = 0
     if repeated.any():
-        chosen = _by_continuity(instant, early, late, repeated, step * file_direction(printed))
+        direction = file_direction(printed)
+        order = slice(None, None, direction)
+        chosen, either_way = _by_continuity(
+            instant[order], early[order], late[order], repeated[order], step
+        )
+        chosen = chosen[order]
         undecided = chosen == NOT_A_TIME
         chosen = np.where(undecided & edge, late, chosen)
         instant = np.where(repeated, chosen, instant)
         fault[repeated & (chosen == NOT_A_TIME)] = 2
-    return instant, fault
+    return instant, fault, either_way
 
 
 def _by_continuity(
     instant: IntArray, early: IntArray, late: IntArray, repeated: npt.NDArray[np.bool_], step: int
-) -> IntArray:
+) -> tuple[IntArray, int]:
     """Which of its two instants each repeated stamp is, by the rows around it.
 
-    `step` is signed: negative for a file that runs backward. Each unbroken run of such
-    rows takes the reading in which the fewest rows fail to advance by one interval; of
-    equals, the one that holds longest in the file's own direction. A row that fits both
-    ways alike is left undecided.
+    The arrays run forward in time. Each unbroken run of such rows takes the reading in
+    which the fewest rows fail to advance by one interval; of equals, the one that holds
+    longest, so that an hour that stands once is its first pass, whichever way the file
+    runs. Such rows are counted; a row that fits both ways alike is left undecided.
     """
     chosen = np.where(repeated, NOT_A_TIME, instant)
     rows = np.flatnonzero(repeated)
+    either_way = 0
     for run in np.split(rows, np.flatnonzero(np.diff(rows) > 1) + 1):
-        _decide_run(run, chosen, early, late, step)
-    return chosen
+        either_way += _decide_run(run, chosen, early, late, step)
+    return chosen, either_way
 
 
 #: Steps that are off, then where they are (an earlier one is the higher bit): less is better.
 _Misfit = tuple[int, int]
 
 
-def _decide_run(
-    run: IntArray, chosen: IntArray, early: IntArray, late: IntArray, step: int
-) -> None:
-    """Shortest path through the two readings of each row, from both ends."""
+def _decide_run(run: IntArray, chosen: IntArray, early: IntArray, late: IntArray, step: int) -> int:
+    """Shortest path through the two readings of each row, from both ends.
+
+    Returns how many rows fit both readings with as few misfits.
+    """
+    either_way = 0
     count = len(run)
     states = [(int(early[row]), int(late[row])) for row in run]
     before, after = int(run[0]) - 1, int(run[-1]) + 1
@@ -179,7 +192,7 @@ def _decide_run(
     def misfit(one: int, following: int, place: int) -> _Misfit:
         if NOT_A_TIME in (one, following) or following - one == step:
             return 0, 0
-        backward = (following - one) * step < 0
+        backward = following < one
         return 2 if backward else 1, 1 << (count - place)
 
     def best(options: list[tuple[_Misfit, _Misfit]]) -> _Misfit:
@@ -196,6 +209,7 @@ def _decide_run(
     onward = [misfit(state, last, count) for state in states[-1]]
     for k in range(count - 1, -1, -1):
         as_early, as_late = (best([(forward[k][s], onward[s])]) for s in (0, 1))
+        either_way += as_early != as_late and as_early[0] == as_late[0]
         if as_early != as_late:
             chosen[run[k]] = states[k][0 if as_early < as_late else 1]
         if k:
@@ -203,3 +217,4 @@ def _decide_run(
                 best([(misfit(state, states[k][s], k), onward[s]) for s in (0, 1)])
                 for state in states[k - 1]
             ]
+    return either_way

@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any
 
-from meterlens.settings import Service, Site
+from meterlens.settings import Service, map_digest
 from meterlens.store.database import Store
 from meterlens.studies.findings import Finding, ranked
+from meterlens.studies.flag_findings import flag_findings, mismatch_finding
 from meterlens.studies.site_time import local_iso
 
-__all__ = ["check_services", "service_coverage"]
+__all__ = ["check_services", "stale_notes"]
 
 
 def check_services(store: Store, *, service: str | None = None) -> dict[str, Any]:
@@ -29,23 +31,11 @@ def check_services(store: Store, *, service: str | None = None) -> dict[str, Any
         minutes from first to last), ``gaps`` and ``findings``; and ``notes``.
     """
     services = [store.site.service(service)] if service else list(store.site.services)
-    notes: list[dict[str, Any]] = []
+    notes = stale_notes(store, services)
     return {
         "services": [_check(store, one, notes) for one in services],
         "notes": notes,
     }
-
-
-def service_coverage(store: Store, service: Service) -> list[dict[str, Any]]:
-    """Minutes present, and minutes with a total power, of each local day."""
-    return [
-        {
-            "day": row["day"].isoformat(),
-            "minutes_present": row["minutes_present"],
-            "minutes_with_p": row["minutes_with_p"],
-        }
-        for row in store.rows("check/coverage", service=service.id)
-    ]
 
 
 def _check(store: Store, service: Service, notes: list[dict[str, Any]]) -> dict[str, Any]:
@@ -74,8 +64,10 @@ def _check(store: Store, service: Service, notes: list[dict[str, Any]]) -> dict[
     ]
     findings = [
         *_gap_findings(service, gaps),
+        *_missing_power(store, service),
+        *mismatch_finding(store, service),
         *_file_findings(store, service, first, last),
-        *_flag_findings(store, site, service),
+        *flag_findings(store, service),
     ]
     return {
         "service": service.id,
@@ -113,6 +105,58 @@ def _gap_findings(service: Service, gaps: list[dict[str, Any]]) -> list[Finding]
     ]
 
 
+def stale_notes(store: Store, services: Sequence[Service]) -> list[dict[str, Any]]:
+    """Which services have files that were read under an earlier column map."""
+    notes = []
+    for service in services:
+        current = map_digest(store.site, service)
+        stale = sum(
+            row["files"]
+            for row in store.rows("check/stale_file", service=service.id)
+            if row["map_digest"] != current
+        )
+        if stale:
+            files = "1 file was" if stale == 1 else f"{stale} files were"
+            notes.append(
+                {
+                    "key": "columns",
+                    "service": service.id,
+                    "reason": f"{files} read under an earlier column map or time zone: run "
+                    "meterlens ingest to read them as the site says now",
+                }
+            )
+    return notes
+
+
+def _missing_power(store: Store, service: Service) -> list[Finding]:
+    """Intervals that are there but have no total power."""
+    runs = store.rows("check/missing_power", service=service.id)
+    if not runs:
+        return []
+    site = store.site
+    longest = max(runs, key=lambda run: run["intervals"])
+    count = sum(run["intervals"] for run in runs)
+    start = local_iso(site, longest["start_utc"])
+    when = start[:16].replace("T", " ")
+    return [
+        Finding(
+            kind="power-missing",
+            service=service.id,
+            phase=None,
+            start=start,
+            end=local_iso(site, longest["end_utc"]),
+            severity="look",
+            magnitude=float(count),
+            unit="intervals",
+            confidence="high",
+            text=f"{count} intervals are in the record without a total power, for want of a "
+            f"value of a loaded phase; the longest run, {longest['intervals']} intervals, "
+            f"begins {when}.",
+            next_step="See the blank and rejected values there; export them again.",
+        )
+    ]
+
+
 def _file_findings(store: Store, service: Service, first: str, last: str) -> list[Finding]:
     """Rows that were repeated, corrected or not readable, by what the files said."""
     files = store.rows("check/file_outcome", service=service.id)
@@ -121,7 +165,7 @@ def _file_findings(store: Store, service: Service, first: str, last: str) -> lis
             "duplicate",
             "rows_duplicate",
             "note",
-            "rows say again what is stored; they change nothing.",
+            "repeated rows: they say what is stored already and change nothing.",
             "Nothing to do; overlapping exports are safe.",
         ),
         (
@@ -142,7 +186,7 @@ def _file_findings(store: Store, service: Service, first: str, last: str) -> lis
             "impossible-value",
             "values_rejected",
             "look",
-            "single values cannot be and are left blank; the view reject has each.",
+            "impossible values, left blank; the view reject has each.",
             'Run meterlens query "select * from reject where column is not null".',
         ),
     )
@@ -165,59 +209,4 @@ def _file_findings(store: Store, service: Service, first: str, last: str) -> lis
                     next_step=step,
                 )
             )
-    return findings
-
-
-_FLAG_WORDING = {
-    "sign-unexpected": (
-        "sign-unexpected",
-        "intervals print a negative power factor although the column map says unsigned.",
-        "Find out what the meter's sign means and set pf_convention.",
-    ),
-    "power-mismatch": (
-        "power-mismatch",
-        "intervals have a metered power that differs from V·I·PF by more than 2 % of S.",
-        "Check the column map: phases, scale, and which power each column holds.",
-    ),
-    "q-unknown": (
-        "q-unknown",
-        "intervals have a reactive power whose sign nothing tells; it is left unknown.",
-        "Add a kvar or a lead/lag column to the export.",
-    ),
-    "lead-lag-assumed": (
-        "sign-assumed",
-        "intervals take lagging or leading from the column map's assumption; a reversed "
-        "current transformer or a leading load cannot be seen in them.",
-        "Add a kvar or a lead/lag column to the export.",
-    ),
-    "pf-clamped": (
-        "pf-clamped",
-        "intervals print a power factor a little above 1, read as 1.",
-        "Nothing to do.",
-    ),
-}
-
-
-def _flag_findings(store: Store, site: Site, service: Service) -> list[Finding]:
-    findings = []
-    for row in store.rows("check/flag_count", service=service.id):
-        if row["flag"] not in _FLAG_WORDING:
-            continue
-        kind, text, step = _FLAG_WORDING[row["flag"]]
-        harmless = row["flag"] == "pf-clamped"
-        findings.append(
-            Finding(
-                kind=kind,
-                service=service.id,
-                phase=None,
-                start=local_iso(site, row["first_utc"]),
-                end=local_iso(site, row["last_utc"]),
-                severity="note" if harmless else "look",
-                magnitude=float(row["intervals"]),
-                unit="intervals",
-                confidence="high",
-                text=f"{row['intervals']} {text}",
-                next_step=step,
-            )
-        )
     return findings

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Any
 
 from meterlens.settings import Service
@@ -13,7 +14,7 @@ _SEVERITY: dict[str, Severity] = {
     "low-pf": "act",
     "leading": "look",
     "current-imbalance": "look",
-    "voltage-imbalance": "act",
+    "voltage-imbalance": "look",
     "voltage": "act",
     "overload": "urgent",
 }
@@ -51,7 +52,33 @@ def period_findings(
     by_kind: dict[str, list[dict[str, Any]]] = {}
     for period in periods:
         by_kind.setdefault(period["kind"], []).append(period)
-    return [_finding(service, kind, group, sign_is_assumed) for kind, group in by_kind.items()]
+    findings = [_finding(service, kind, group, sign_is_assumed) for kind, group in by_kind.items()]
+    supply = by_kind.get("voltage-imbalance", [])
+    return [
+        _with_supply(finding) if _happens_in(finding, supply) else finding for finding in findings
+    ]
+
+
+def _happens_in(finding: Finding, supply: list[dict[str, Any]]) -> bool:
+    """True for a current imbalance while the voltages are out of balance."""
+    return finding.kind == "current-imbalance" and any(
+        finding.start < period["end"] and period["start"] < finding.end for period in supply
+    )
+
+
+def _with_supply(finding: Finding) -> Finding:
+    return replace(
+        finding,
+        text=finding.text + " The voltages are out of balance at the same time.",
+        next_step="Look at the supply first: uneven voltages make motors' currents uneven.",
+    )
+
+
+def _severity(kind: str, worst: dict[str, Any]) -> Severity:
+    """Overload by size and length: a breaker carries a little for a while."""
+    if kind == "overload" and worst["worst"] < 1.2 and worst["hours"] < 1.0:
+        return "act"
+    return _SEVERITY[kind]
 
 
 def _worst(kind: str, group: list[dict[str, Any]]) -> dict[str, Any]:
@@ -67,7 +94,7 @@ def _finding(
     worst = _worst(kind, group)
     hours = sum(p["hours"] for p in group)
     often = "in one period" if len(group) == 1 else f"in {len(group)} periods"
-    when = worst["start"][:16].replace("T", " ")
+    when = worst["worst_start"][:16].replace("T", " ")
     text = _sentence(service, kind, worst, f"{hours:.4g} h {often}", when, group)
     confidence: Confidence = "high"
     if kind == "voltage-imbalance":
@@ -82,7 +109,7 @@ def _finding(
         phase=worst["phase"],
         start=worst["start"],
         end=worst["end"],
-        severity=_SEVERITY[kind],
+        severity=_severity(kind, worst),
         magnitude=worst["worst"],
         unit=worst["unit"],
         confidence=confidence,
@@ -106,25 +133,25 @@ def _sentence(
     if kind == "low-pf":
         kvarh = sum(p["kvarh_above_target"] for p in group)
         return (
-            f"Lagging power factor under {service.target_pf:g} for {total}, lowest {size:.3f} in "
-            f"the period from {when}; {kvarh:,.0f} kvarh above target."
+            f"Lagging power factor under {service.target_pf:g} for {total}, lowest {size:.3f} at "
+            f"{when}; {kvarh:,.0f} kvarh above target."
         )
     if kind == "leading":
-        return f"Leading power factor for {total}, lowest {size:.3f} in the period from {when}."
+        return f"Leading power factor for {total}, lowest {size:.3f} at {when}."
     if kind == "current-imbalance":
         return (
-            f"Phase currents apart for {total}, at most {size:.1%} from their mean{phase} in the "
-            f"period from {when}."
+            f"Phase currents apart for {total}, at most {size:.1%} from their mean{phase} at "
+            f"{when}."
         )
     if kind == "voltage-imbalance":
-        return f"Voltage imbalance for {total}, at most {size:.2%} in the period from {when}."
+        return f"Voltage imbalance for {total}, at most {size:.2%} at {when}."
     if kind == "voltage":
         low, high = service.voltage_band_pu
         return (
             f"Voltage outside {low:g} to {high:g} of nominal for {total}, {size:.3f} at the "
-            f"worst{phase} in the period from {when}."
+            f"worst{phase} at {when}."
         )
     return (
         f"Current above the {service.rating_a:g} A rating for {total}, {size:.1%} of it at the "
-        f"highest{phase} in the period from {when}."
+        f"highest{phase} at {when}."
     )

@@ -5,12 +5,11 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
-import numpy as np
-
+from meterlens.electrical.power import power_factor_of_totals
 from meterlens.errors import RequestError
 from meterlens.settings import PERIOD_KINDS, Service, Site
 from meterlens.store.database import Store
-from meterlens.studies.site_time import local_iso
+from meterlens.studies.site_time import local_iso, refuse_unknown_months
 
 __all__ = ["find_periods", "service_periods"]
 
@@ -38,19 +37,19 @@ def find_periods(
     Raises
     ------
     RequestError
-        No such kind or service.
+        No such kind or service, or a month without readings.
     """
     if kind is not None and kind not in PERIOD_KINDS:
         raise RequestError(
             f'there is no kind of period "{kind}"', hint="Kinds: " + ", ".join(PERIOD_KINDS) + "."
         )
+    refuse_unknown_months(store, months)
     services = [store.site.service(service)] if service else list(store.site.services)
     periods: list[dict[str, Any]] = []
     wanted: Sequence[str | None] = months or (None,)
     for one in services:
         for month in wanted:
             periods += service_periods(store, one, kind=kind, month=month)
-    periods.sort(key=lambda p: (p["service"], p["start"], p["kind"]))
     return {"periods": periods, "notes": []}
 
 
@@ -66,15 +65,14 @@ def _period(site: Site, row: dict[str, Any]) -> dict[str, Any]:
     mean = row["mean"]
     if row["kind"] in ("low-pf", "leading"):
         # A power factor is never averaged: it is that of the period's energies.
-        p, q = row["net_energy_kwh"], row["net_reactive_kvarh"]
-        apparent = float(np.hypot(p, q))
-        mean = abs(p) / apparent if apparent > 0 else None
+        mean = power_factor_of_totals(abs(row["net_energy_kwh"]), row["net_reactive_kvarh"])
     return {
         "service": row["service"],
         "kind": row["kind"],
         "phase": row["phase"],
         "start": local_iso(site, row["start_utc"]),
         "end": local_iso(site, row["end_utc"]),
+        "worst_start": local_iso(site, row["worst_utc"]),
         "hours": row["hours"],
         "intervals": row["intervals"],
         "worst": row["worst"],

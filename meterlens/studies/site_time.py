@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from datetime import UTC, datetime
 
+from meterlens.errors import RequestError
 from meterlens.settings import Site
+from meterlens.store.database import Store
 from meterlens.store.zones import site_zone
 
-__all__ = ["local_iso", "month_of"]
+__all__ = ["local_iso", "refuse_unknown_months"]
 
 
 def local_iso(site: Site, utc: datetime) -> str:
@@ -16,6 +19,11 @@ def local_iso(site: Site, utc: datetime) -> str:
     return local.isoformat(timespec="seconds")
 
 
-def month_of(site: Site, utc: datetime) -> str:
-    """Calendar month of an instant in site time, ``YYYY-MM``."""
-    return local_iso(site, utc)[:7]
+def refuse_unknown_months(store: Store, months: Sequence[str]) -> None:
+    """Raise RequestError for a month in site time that has no readings."""
+    known = [row["month"] for row in store.rows("month/names")]
+    for month in months:
+        if month not in known:
+            raise RequestError(
+                f"there are no readings in {month}.", hint="Months: " + ", ".join(known) + "."
+            )

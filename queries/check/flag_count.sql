@@ -1,19 +1,29 @@
 -- How many intervals of one service carry each flag, and when first and last.
 -- args: $service
 -- row: one flag
-with flagged as (
+with combination as (
     select
-        unnest(flag_words(flag_bits)) as flag,
-        start_utc,
-        start_utc + to_minutes(interval_min) as end_utc
+        flag_bits,
+        count(*) as intervals,
+        min(start_utc) as first_utc,
+        max(start_utc + to_minutes(interval_min)) as last_utc
     from reading
     where service = $service
+    group by flag_bits
+),
+flagged as (
+    select
+        unnest(flag_words(flag_bits)) as flag,
+        intervals,
+        first_utc,
+        last_utc
+    from combination
 )
 select
     flag,
-    count(*) as intervals,
-    min(start_utc) as first_utc,
-    max(end_utc) as last_utc
+    sum(intervals)::bigint as intervals,
+    min(first_utc) as first_utc,
+    max(last_utc) as last_utc
 from flagged
 group by flag
 order by flag;

@@ -13,6 +13,8 @@ with numbered as (
         header = false,
         auto_detect = false,
         max_line_size = 16777216,
+        hive_partitioning = false,
+        compression = 'none',
         columns = {'line': 'varchar'}
     )
 ),

@@ -1,7 +1,8 @@
 -- Every line of an export in file order, split and converted: how many fields it has, its
 -- printed stamp as microseconds, and the numbers of the mapped columns. A time of 24:00 is
--- midnight at the day's end.
--- args: $path, $delimiter, $time_field, $time_field_2, $time_format, $is_epoch, $decimal_mark, $grouped_pattern, $thousands_mark, $doubtful, $missing_number, $v_a, $v_b, $v_c, $v_ab, $v_bc, $v_ca, $i_a, $i_b, $i_c, $i_n, $pf_a, $pf_b, $pf_c, $pf_total, $lead_lag_a, $lead_lag_b, $lead_lag_c, $lead_lag_total, $p_a_kw, $p_b_kw, $p_c_kw, $q_a_kvar, $q_b_kvar, $q_c_kvar, $s_a_kva, $s_b_kva, $s_c_kva, $p_kw, $q_kvar, $s_kva
+-- midnight at the day's end. Formats that read an offset know no Z, and
+-- where the clock is UTC a stamp may say so.
+-- args: $path, $delimiter, $time_field, $time_field_2, $time_format, $offset_rule, $is_epoch, $decimal_mark, $grouped_pattern, $thousands_mark, $doubtful, $missing_number, $v_a, $v_b, $v_c, $v_ab, $v_bc, $v_ca, $i_a, $i_b, $i_c, $i_n, $pf_a, $pf_b, $pf_c, $pf_total, $lead_lag_a, $lead_lag_b, $lead_lag_c, $lead_lag_total, $p_a_kw, $p_b_kw, $p_c_kw, $q_a_kvar, $q_b_kvar, $q_c_kvar, $s_a_kva, $s_b_kva, $s_c_kva, $p_kw, $q_kvar, $s_kva
 -- row: one line of the file
 with line_of_file as (
     select string_split(line, $delimiter) as field
@@ -13,6 +14,8 @@ with line_of_file as (
         header = false,
         auto_detect = false,
         max_line_size = 16777216,
+        hive_partitioning = false,
+        compression = 'none',
         columns = {'line': 'varchar'}
     )
 ),
@@ -22,8 +25,20 @@ stamped as (
         case
             when $time_field_2::integer is null then trim(field[$time_field::integer])
             else trim(field[$time_field::integer]) || ' ' || trim(field[$time_field_2::integer])
-        end as stamp
+        end as printed_stamp
     from line_of_file
+),
+timed as (
+    select
+        field,
+        case
+            when $offset_rule::varchar = 'read'
+                then regexp_replace(printed_stamp, '[Zz]$', '+00:00')
+            when $offset_rule::varchar = 'none-but-utc'
+                then regexp_replace(printed_stamp, '([Zz]|[+-]00:?00)$', '')
+            else printed_stamp
+        end as stamp
+    from stamped
 )
 select
     len(field)::integer as field_count,
@@ -70,4 +85,4 @@ select
     printed_number(field[$p_kw::integer], $decimal_mark, $grouped_pattern, $thousands_mark, $doubtful, $missing_number) as p_kw,
     printed_number(field[$q_kvar::integer], $decimal_mark, $grouped_pattern, $thousands_mark, $doubtful, $missing_number) as q_kvar,
     printed_number(field[$s_kva::integer], $decimal_mark, $grouped_pattern, $thousands_mark, $doubtful, $missing_number) as s_kva
-from stamped;
+from timed;

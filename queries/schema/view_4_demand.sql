@@ -73,8 +73,8 @@ select
     start_local,
     utc_offset_min,
     window_min,
-    p_min >= window_min as complete,
-    q_min >= window_min as q_complete,
+    p_min = window_min as complete,
+    q_min = window_min as q_complete,
     case when p_min > 0 then p_kw_min / p_min end as p_kw,
     case when q_min > 0 then q_kvar_min / q_min end as q_kvar
 from every_window;

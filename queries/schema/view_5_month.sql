@@ -33,19 +33,24 @@ summed as (
         sum(interval_min)::bigint as minutes_present,
         sum(case when p_kw is not null then interval_min else 0 end)::bigint as minutes_with_p,
         sum(case when q_kvar is not null then interval_min else 0 end)::bigint as minutes_with_q,
-        fsum(greatest(p_kw, 0) * hours) as energy_kwh,
-        fsum(greatest(-p_kw, 0) * hours) as energy_export_kwh,
-        fsum(greatest(q_kvar, 0) * hours) as reactive_lagging_kvarh,
-        fsum(greatest(-q_kvar, 0) * hours) as reactive_leading_kvarh,
+        fsum(case when p_kw is not null then greatest(p_kw, 0) * hours end) as energy_kwh,
+        fsum(case when p_kw is not null then greatest(-p_kw, 0) * hours end) as energy_export_kwh,
+        fsum(case when q_kvar is not null then greatest(q_kvar, 0) * hours end) as reactive_lagging_kvarh,
+        fsum(case when q_kvar is not null then greatest(-q_kvar, 0) * hours end) as reactive_leading_kvarh,
         fsum(s_billing_kva * hours) as apparent_kvah,
-        fsum(greatest(q_kvar - p_kw * tangent_target, 0) * hours) as kvarh_above_target,
+        fsum(
+            case
+                when p_kw is not null and q_kvar is not null
+                    then greatest(q_kvar - p_kw * tangent_target, 0) * hours
+            end
+        ) as kvarh_above_target,
         fsum(hours) filter (
             -- From the doubles, and at the target is not below it.
-            p_kw * q_kvar > 0
+            (p_kw * q_kvar > 0 or (p_kw = 0 and q_kvar > 0))
             and pf_vector is not null
             and abs(p_kw) < (target_pf - 1e-9::double) * s_vector_kva
-        ) as low_pf_hours,
-        fsum(hours) filter (q_kvar < 0) as leading_hours,
+        ) as low_pf_hours_found,
+        fsum(hours) filter (q_kvar < 0) as leading_hours_found,
         max(i_a) as i_a_max,
         max(i_b) as i_b_max,
         max(i_c) as i_c_max,
@@ -57,14 +62,19 @@ summed as (
         max(voltage_high) as voltage_max_pu,
         fsum(hours) filter (
             voltage_low < voltage_low_pu or voltage_high > voltage_high_pu
-        ) as hours_outside_voltage_band,
+        ) as hours_outside_band_found,
         fsum(hours) filter (voltage_low is not null) as hours_with_voltage,
         any_value(rating_a) as rating_a
     from interval_of_month
     group by service, month
 )
 select
-    summed.*,
+    summed.* exclude (low_pf_hours_found, leading_hours_found, hours_outside_band_found),
+    -- No such hour is 0 where it could be seen, and null where it could not.
+    case when minutes_with_q > 0 then coalesce(low_pf_hours_found, 0) end as low_pf_hours,
+    case when minutes_with_q > 0 then coalesce(leading_hours_found, 0) end as leading_hours,
+    case when voltage_min_pu is not null then coalesce(hours_outside_band_found, 0) end
+        as hours_outside_voltage_band,
     minutes_with_p::double / calendar_month.minutes as completeness,
     greatest(i_a_max, i_b_max, i_c_max) as peak_current_a,
     case greatest(i_a_max, i_b_max, i_c_max)

@@ -46,8 +46,10 @@ measured as (
         case
             when i.load_fraction < k.load_floor_fraction then null
             when k.kind in ('low-pf', 'leading') and i.pf_vector is null then null
-            when k.kind = 'low-pf' and i.p_kw * i.q_kvar > 0 then -abs(i.p_kw) / i.s_vector_kva
-            when k.kind = 'leading' and i.p_kw * i.q_kvar < 0 then -abs(i.p_kw) / i.s_vector_kva
+            when k.kind = 'low-pf' and (i.p_kw * i.q_kvar > 0 or (i.p_kw = 0 and i.q_kvar > 0))
+                then -abs(i.p_kw) / i.s_vector_kva
+            when k.kind = 'leading' and (i.p_kw * i.q_kvar < 0 or (i.p_kw = 0 and i.q_kvar < 0))
+                then -abs(i.p_kw) / i.s_vector_kva
             when k.kind = 'current-imbalance' then i.current_unbalance
             when k.kind = 'voltage-imbalance' and k.measure = 'vuf' then i.vuf
             when k.kind = 'voltage-imbalance' then i.lvur
@@ -132,6 +134,9 @@ run_of_intervals as (
         count(*) as intervals,
         sum(interval_min) as minutes,
         max(badness) as badness_max,
+        arg_max(
+            start_utc, struct_pack(badness := badness, earlier := -epoch_us(start_utc))
+        ) as worst_utc,
         favg(badness) as badness_mean,
         arg_max(phase, struct_pack(badness := badness, earlier := -epoch_us(start_utc))) as phase,
         arg_max(
@@ -167,6 +172,7 @@ select
         when kind in ('low-pf', 'leading') then null
         else badness_mean
     end as mean,
+    worst_utc,
     unit,
     energy_kwh,
     kvarh_above_target,

@@ -160,17 +160,63 @@ def test_charts_move_together(browser: Any, folder: Path) -> None:
     page.mouse.move(box["x"] + box["width"] * 0.5, middle, steps=5)
     page.mouse.up()
     part = until(page, RANGES, lambda r: len(set(r)) == 1 and set(r) != whole)
-    page.get_by_role("button", name="7 days").click()
+    choice = page.get_by_role("combobox", name="Show")
+    assert choice.input_value() == ""
+    choice.select_option("one week")
     week = until(page, RANGES, lambda r: len(set(r)) == 1 and r != part)
     start, end = (datetime.fromisoformat(stamp) for stamp in week[0].split(" to "))
     assert end - start == timedelta(days=7)
     page.get_by_role("button", name="Later").click()
     later = until(page, RANGES, lambda r: len(set(r)) == 1 and r != week)
     assert later[0].startswith(end.isoformat())
-    page.get_by_role("button", name="Whole record").click()
+    assert choice.input_value() == "7"
+    choice.select_option("whole record")
     until(page, RANGES, lambda r: set(r) == whole)
+    assert choice.input_value() == "0"
     page.context.close()
     assert seen.said == []
+
+
+def test_time_is_chosen_by_keys_alone(browser: Any, folder: Path) -> None:
+    seen = visit(browser, folder / "main.html")
+    page = seen.page
+    whole = page.evaluate(RANGES)
+    page.locator("#span").focus()
+    page.keyboard.press("ArrowDown")
+    month = until(page, RANGES, lambda r: len(set(r)) == 1 and r != whole)
+    page.keyboard.press("Tab")
+    assert page.evaluate("document.activeElement.textContent") == "Earlier"
+    page.keyboard.press("Enter")
+    until(page, RANGES, lambda r: len(set(r)) == 1 and r != month)
+    later = page.get_by_role("button", name="Later")
+    later.click()
+    until(page, RANGES, lambda r: r == month)
+    assert later.get_attribute("aria-disabled") == "true"
+    page.context.close()
+    assert seen.said == []
+
+
+def test_small_screen_stacks_findings_and_marks_wide_tables(browser: Any, folder: Path) -> None:
+    seen = visit(browser, folder / "main.html", width=360)
+    page = seen.page
+    cells = page.get_by_role("region", name="Findings").get_by_role("cell")
+    assert cells.count() > 10
+    for box in cells.evaluate_all("cells => cells.map(c => c.getBoundingClientRect().toJSON())"):
+        assert 0 <= box["left"] < box["right"] <= 360
+    assert page.get_by_role("region", name="Findings").get_by_text("scroll").is_hidden()
+    assert page.get_by_role("region", name="How it ran").get_by_text("scroll →").is_visible()
+    page.context.close()
+
+
+@pytest.mark.parametrize("name", ["main.html", "annex.html"])
+def test_tables_fit_a_desk_screen(browser: Any, folder: Path, name: str) -> None:
+    seen = visit(browser, folder / name)
+    wide = seen.page.evaluate(
+        "[...document.querySelectorAll('.sheet')].filter(s => s.scrollWidth > s.clientWidth + 1)"
+        ".map(s => s.getAttribute('aria-label'))"
+    )
+    seen.page.context.close()
+    assert wide == []
 
 
 def test_hostile_names_run_nothing(browser: Any, tmp_path: Path) -> None:

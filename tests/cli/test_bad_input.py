@@ -84,8 +84,16 @@ BAD_EXPORTS = (
     BadExport(
         "milliseconds",
         HEADER + "".join(_row(f"{1796075940000 + 60000 * n}") for n in range(4)),
-        ("bad.csv",),
+        ("bad.csv:2:", "timestamp_format", "milliseconds"),
         {"timestamp_format": "epoch"},
+    ),
+    BadExport("column-free-name", GOOD.replace("Ib", "I2"), ("i_b", 'file: "I2". Correct')),
+    BadExport("endless-line", "x" * 5_000_000, ("bad.csv:1:", "first line", "4 MiB")),
+    BadExport(
+        "offset-under-local",
+        HEADER + "".join(_row(stamp + "Z") for stamp in STAMPS),
+        ("bad.csv:2:", "timestamp_format", 'clock = "offset"'),
+        {"clock": "local"},
     ),
     BadExport("months", HEADER + _row("2026-10-01T00:00") + _row("2026-11-01T00:00"),
               ("bad.csv", "interval_min")),
@@ -108,6 +116,14 @@ def test_folder_instead_of_a_file(site: SmallSite, before: list[list[Any]]) -> N
     """A folder is told from a file."""
     (site.folder / "exports").mkdir()
     refused(site.run("ingest", site.folder / "exports"), "exports", "folder")
+    assert site.contents() == before
+
+
+def test_pipe_instead_of_a_file(site: SmallSite, before: list[list[Any]]) -> None:
+    """Nobody writes into it: the command must not wait."""
+    os.mkfifo(site.folder / "pipe.csv")
+    refused(site.run("ingest", site.folder / "pipe.csv"), "pipe.csv", "regular file")
+    (site.folder / "pipe.csv").unlink()
     assert site.contents() == before
 
 

@@ -55,6 +55,9 @@ FOUR_CLOCKS = (
     ("offset", "start", "2026-07-01T06:{:02d}-06:00", "2026-07-01T12:00"),
     ("offset", "start", "2026-07-01T12:{:02d}Z", "2026-07-01T12:00"),
     ("offset", "end", "2026-07-01 12:{:02d}:00Z", "2026-07-01T12:00"),
+    ("utc", "start", "2026-07-01T12:{:02d}Z", "2026-07-01T12:00"),
+    ("utc", "start", "2026-07-01 12:{:02d}:00+00:00", "2026-07-01T12:00"),
+    ("utc", "end", "2026-07-01T12:{:02d}:00.000+0000", "2026-07-01T12:00"),
 )
 
 
@@ -66,6 +69,22 @@ def test_four_clocks(tmp_path: Path, clock: str, marks: str, stamp: str, first: 
     assert counts(outcome) == (4, 4, 0, 0, 0)
     start = datetime.fromisoformat(first) - timedelta(minutes=15 * (marks == "end"))
     assert site.starts() == run_of(start.isoformat(), 4, 15)
+
+
+@pytest.mark.parametrize("mark", ["Z", "+0000", "+00:00"])
+def test_offset_in_a_format_of_the_map(tmp_path: Path, mark: str) -> None:
+    """`%z` takes Z as well."""
+    site = SmallSite(tmp_path).write(clock="offset", timestamp_format="%d.%m.%Y %H:%M %z")
+    assert counts(take(site, [f"01.07.2026 12:{m} {mark}" for m in ("00", "15")]))[1] == 2
+    assert site.starts() == run_of("2026-07-01T12:00", 2, 15)
+
+
+def test_other_offset_under_utc(tmp_path: Path) -> None:
+    """A stamp that contradicts the map's clock is no time."""
+    site = SmallSite(tmp_path).write()
+    outcome = take(site, [*day("2026-07-01", "12:00Z 12:15Z"), "2026-07-01T14:30+02:00"])
+    assert counts(outcome) == (3, 2, 0, 0, 1)
+    assert outcome["rejects"][0]["reason"] == "no usable time"
 
 
 def test_local_standard_in_the_south(tmp_path: Path) -> None:

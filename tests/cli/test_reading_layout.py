@@ -164,10 +164,11 @@ def test_epoch(site: SmallSite) -> None:
     read_right(site, table([NAMES, *rows], ";"), 2)
 
 
-@pytest.mark.parametrize("year", ["0206"])
+@pytest.mark.parametrize("year", ["0206", "9999", "1969", "2100"])
 def test_year_with_a_wrong_digit_is_no_time(site: SmallSite, year: str) -> None:
     """One torn digit must not stretch the record over centuries."""
-    outcome = site.take(HEADER + BODY + BODY.splitlines()[0].replace("2026", year) + "\n")
+    torn = BODY.splitlines()[0].replace("2026", year)
+    outcome = site.take(HEADER + BODY + torn + "\n")
     assert counts(outcome) == (5, 4, 0, 0, 1)
     assert "time" in outcome["rejects"][0]["reason"]
 
@@ -206,6 +207,27 @@ def test_impossible_values_are_blank_and_named(site: SmallSite) -> None:
         [230.0, None, 10.0, None],
         [230.0, 231.0, None, 11.0],
     ]
+
+
+def test_reason_follows_the_scaled_sign(site: SmallSite) -> None:
+    """Meters that print load currents negative; a positive one is negative then."""
+    site.write(scale={"i_a": -1})
+    rows = [
+        [stamp, 230, 231, 232, i, 11, 12] for stamp, i in zip(STAMPS, (-5, 5, -6, "x"), strict=True)
+    ]
+    outcome = site.take(table([NAMES, *rows], ";"))
+    assert [(r["line"], r["reason"]) for r in outcome["rejects"]] == [
+        (3, "a negative current"), (5, "not a finite number"),
+    ]  # fmt: skip
+    assert site.stored("i_a") == [[5.0], [None], [6.0], [None]]
+
+
+def test_reason_of_a_grouped_negative_number(site: SmallSite) -> None:
+    """Marks within the number do not hide its sign."""
+    site.write(decimal=",", thousands=".")
+    rows = [[stamp, 230, 231, 232, "-1.234,5", 11, 12] for stamp in STAMPS]
+    outcome = site.take(table([NAMES, *rows], ";"))
+    assert {r["reason"] for r in outcome["rejects"]} == {"a negative current"}
 
 
 def test_rows_with_a_wrong_number_of_fields(site: SmallSite) -> None:

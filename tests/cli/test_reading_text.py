@@ -25,6 +25,13 @@ def site(tmp_path: Path) -> SmallSite:
     return SmallSite(tmp_path).write()
 
 
+def notes_on(site: SmallSite, text: str | bytes) -> str:
+    """What the reader says that it assumed."""
+    ran = site.run("ingest", "--json", site.export(text))
+    assert ran.code == 0, ran.err
+    return " ".join(note["reason"] for note in ran.document["notes"])
+
+
 def read_right(site: SmallSite, text: str | bytes, encoding: str = "utf-8") -> None:
     """All four rows are stored, with every value."""
     outcome = site.take(text, encoding=encoding)
@@ -151,6 +158,33 @@ def test_one_broken_byte_costs_one_row_at_most(site: SmallSite) -> None:
     assert outcome["rows_rejected"] + outcome["values_rejected"] == 1
 
 
+def test_broken_byte_is_noted(site: SmallSite) -> None:
+    """What was assumed of the encoding stands in the notes."""
+    site.write(timestamp="Größe")
+    assert "UTF-8" in notes_on(site, ACCENTED.encode() + b"\xff\n")
+    assert "read as cp1252" in notes_on(site, ACCENTED.encode("cp1252"))
+
+
+@pytest.mark.parametrize("shift", [0, 1])
+def test_accent_over_the_end_of_a_chunk(site: SmallSite, shift: int) -> None:
+    """Bytes are read a mebibyte at a time; a letter of two may lie over its end."""
+    remark = "x" * ((1 << 20) - shift) + "é\n" + "x" * (1 << 20) + "\n"
+    read_right(site, remark + PLAIN)
+
+
+def test_half_a_letter_before_plain_text(site: SmallSite) -> None:
+    """The first byte of a pair ends a chunk, and all that follows is ASCII: no UTF-8."""
+    padding = b"x" * ((1 << 20) - 1) + "é".encode("cp1252")
+    body = [[*row, "Note" if n == 0 else "x"] for n, row in enumerate(ROWS)]
+    read_right(site, padding + b"\n" + table(body).encode("cp1252"))
+
+
+def test_separators_of_the_machine_are_blanks(site: SmallSite) -> None:
+    """Control characters that the reader uses itself, in a note."""
+    rows = [[*row, "Note" if n == 0 else "a\x1db"] for n, row in enumerate(ROWS)]
+    read_right(site, table(rows))
+
+
 @pytest.mark.parametrize("end", ["\n", "\r\n", "\r"])
 @pytest.mark.parametrize("last", [True, False])
 def test_line_ends(site: SmallSite, end: str, last: bool) -> None:
@@ -218,6 +252,62 @@ def test_stray_quote_costs_its_own_row(site: SmallSite) -> None:
     outcome = site.take("\n".join([*lines[:2], '"torn,1,2,3,4,5,6', *lines[2:]]) + "\n")
     assert counts(outcome) == (5, 4, 0, 0, 1)
     assert outcome["rejects"][0]["line"] == 3
+
+
+QUOTED = [[f'"{cell}"' for cell in row] for row in ROWS]
+STRAY = ('"torn,1,2,3,4,5,6', '"torn', '"torn,"1","2","3","4","5","6"', '"1","2","torn')
+
+
+@pytest.mark.parametrize("stray", STRAY)
+@pytest.mark.parametrize("place", [2, 5])
+def test_stray_quote_among_quoted_rows(site: SmallSite, stray: str, place: int) -> None:
+    """The next row's first quote does not close it, nor does the end of the file."""
+    lines = table(QUOTED).rstrip("\n").split("\n")
+    outcome = site.take("\n".join([*lines[:place], stray, *lines[place:]]) + "\n")
+    assert counts(outcome) == (5, 4, 0, 0, 1)
+    assert outcome["rejects"][0]["line"] == place + 1
+    assert site.stored(*VALUE_COLUMNS) == WANTED
+
+
+def test_stray_quote_far_from_the_next(site: SmallSite) -> None:
+    """Many short lines after it: they stand for themselves."""
+    outcome = site.take(PLAIN + '"torn\n' + "x\n" * 50 + 'y"\n')
+    assert counts(outcome) == (56, 4, 0, 0, 52)
+
+
+def test_note_over_lines_in_the_first_column(site: SmallSite) -> None:
+    """The last line of the note looks like a whole row, but for its quote."""
+    rows = [['"Note"' if n == 0 else '"two\nlines"', *row] for n, row in enumerate(ROWS)]
+    read_right(site, table(rows))
+
+
+def test_header_over_two_lines(site: SmallSite) -> None:
+    """A line end inside a column's name is a blank."""
+    site.write(v_a="U L1 [V]")
+    read_right(site, PLAIN.replace("Va", '"U L1\n[V]"', 1))
+
+
+def test_long_first_line(site: SmallSite) -> None:
+    """A preamble of one endless line."""
+    read_right(site, "x" * 300_000 + "\n" + PLAIN)
+
+
+@pytest.mark.parametrize(
+    ("cells", "is_noted"),
+    [
+        (["1.234", "987", "12"], True),
+        (["1.234", "987.5", "12"], False),
+        (["1.234", "987.125", "12.500"], False),
+        (["1.234", "0.987", "12"], False),
+        (["1.234", "9876", "12"], False),
+    ],
+)
+def test_point_that_may_group_thousands(site: SmallSite, cells: list[str], is_noted: bool) -> None:
+    """It is read as a decimal point, and said where nothing settles it."""
+    site.write({key: VALUES[key] for key in ("i_a", "i_b", "i_c")})
+    rows = [["Time", "Ia", "Ib", "Ic"], *([stamp, *cells] for stamp in STAMPS)]
+    assert ("thousands" in notes_on(site, table(rows, ";"))) == is_noted
+    assert site.stored("i_a") == [[1.234]] * 4
 
 
 @pytest.mark.parametrize("name", ["export (1).csv", "export[1].csv", "ex{p,q}ort.csv", "é.csv"])

@@ -16,8 +16,6 @@ import pytest
 
 from meterlens.errors import RequestError
 from meterlens.report.pages import ServiceFacts, ServicePage, page_name, write_pages
-from meterlens.report.tables import months_table
-from meterlens.report.words import local_ms, number, percent, when
 
 sys.path.insert(0, str(Path(__file__).parents[1] / "browser"))
 from report_samples import minutes_page, quarters_page
@@ -194,19 +192,3 @@ def test_three_wire_voltages_are_line_to_line(tmp_path: Path) -> None:
     assert "Metered line-to-line voltage over its nominal value (400.0 V)" in text
     assert "L1–L2" in text
     assert "grade: triangle" in text
-
-
-def test_unknown_values_are_dashes() -> None:
-    table = months_table([{"month": "2026-10", "energy_kwh": None}], quarters_page().service, "EUR")
-    assert set(table.rows[0][1:]) == {"–"}
-    assert "Cost, EUR" not in [c.heading for c in table.columns]
-
-
-def test_numbers_and_times_as_people_read_them() -> None:
-    assert number(182340.4, 0) == "182\u202f340"
-    assert number(-0.0001, 2) == "0.00"
-    assert number(-12.345) == "−12.3"
-    assert number(float("nan")) == "–"
-    assert percent(0.8352, 0) == "84\u202f%"
-    assert when("2026-10-25T01:30:00+01:00") == "2026-10-25 01:30"
-    assert local_ms("1970-01-02T00:00:00+05:00") == 86_400_000

@@ -1,10 +1,13 @@
 (function () {
   "use strict";
 
+  var DAY = 86400000;
   var shared = JSON.parse(document.getElementById("palettes").textContent);
   var dark = window.matchMedia("(prefers-color-scheme: dark)");
   var coarse = window.matchMedia("(pointer: coarse)");
   var charts = Array.prototype.slice.call(document.querySelectorAll("[data-figure]"));
+  var span = document.getElementById("span");
+  var moves = Array.prototype.slice.call(document.querySelectorAll("[data-move]"));
   var linked = [];
   var whole = null; // [first, last] in milliseconds of wall clock
   var shown = null;
@@ -46,12 +49,12 @@
     }
     if (layout.meta && layout.meta.aspect) {
       var tall = (width - margin.l - margin.r) * layout.meta.aspect;
-      layout.height = Math.max(150, Math.min(480, tall)) + margin.t + margin.b;
+      layout.height = Math.max(100, Math.min(480, tall)) + margin.t + margin.b;
     }
     if (width >= 560) { return; }
     // Small screens: less margin, smaller type, fewer dates.
     layout.margin.l = Math.min(layout.margin.l, 46);
-    layout.margin.r = 8;
+    if (!(layout.meta && layout.meta.aspect)) { layout.margin.r = 8; }
     layout.font.size = 12;
     if (layout.xaxis.type === "date") { layout.xaxis.nticks = 4; }
     (layout.annotations || []).forEach(function (note) { note.font.size = 11; });
@@ -88,9 +91,20 @@
     }, Promise.resolve()).then(function () { document.body.dataset.charts = "drawn"; });
   }
 
+  function isWhole() { return shown[0] === whole[0] && shown[1] === whole[1]; }
+
+  // The words, the choice and the buttons follow what the charts show, however it came about.
   function say() {
+    if (!shown) { return; }
     var out = document.getElementById("shown");
-    if (shown) { out.textContent = stamp(shown[0]).slice(0, 16) + " to " + stamp(shown[1]).slice(0, 16); }
+    out.textContent = stamp(shown[0]).slice(0, 16) + " to " + stamp(shown[1]).slice(0, 16);
+    var days = isWhole() ? "0" : String((shown[1] - shown[0]) / DAY);
+    span.value = days;
+    if (span.selectedIndex < 0) { span.value = ""; }
+    moves.forEach(function (button) {
+      var done = Number(button.dataset.move) < 0 ? shown[0] <= whole[0] : shown[1] >= whole[1];
+      button.setAttribute("aria-disabled", String(done));
+    });
   }
 
   function show(range, except) {
@@ -119,22 +133,30 @@
 
   function press(event) {
     var button = event.target.closest("button");
-    if (!button || !whole) { return; }
-    var day = 86400000;
-    if (button.dataset.move) {
-      var width = shown[1] - shown[0];
-      show(within(shown[0] + Number(button.dataset.move) * width, width), null);
-    } else if (button.dataset.days === "0") {
-      show(whole.slice(), null);
-    } else {
-      var days = Number(button.dataset.days) * day;
-      var isWhole = shown[0] === whole[0] && shown[1] === whole[1];
-      // From the whole record the newest days; from a closer look, around its middle.
-      show(within(isWhole ? whole[1] - days : (shown[0] + shown[1] - days) / 2, days), null);
-    }
+    if (!button || !whole || button.getAttribute("aria-disabled") === "true") { return; }
+    var width = shown[1] - shown[0];
+    show(within(shown[0] + Number(button.dataset.move) * width, width), null);
+  }
+
+  function choose() {
+    if (!whole) { return; }
+    var width = Number(span.value) * DAY;
+    if (!width) { show(whole.slice(), null); return; }
+    // From the whole record the newest days; from a closer look, around its middle.
+    show(within(isWhole() ? whole[1] - width : (shown[0] + shown[1] - width) / 2, width), null);
+  }
+
+  // A table that is wider than its place says so.
+  function cue() {
+    document.querySelectorAll(".sheet").forEach(function (sheet) {
+      sheet.querySelector(".cue").hidden = sheet.scrollWidth <= sheet.clientWidth + 1;
+    });
   }
 
   document.querySelector(".range").addEventListener("click", press);
+  span.addEventListener("change", choose);
+  window.addEventListener("resize", cue);
+  cue();
   dark.addEventListener("change", drawAll);
   window.addEventListener("beforeprint", function () { printing = true; drawAll(); });
   window.addEventListener("afterprint", function () { printing = false; drawAll(); });
