@@ -14,9 +14,9 @@ from typing import Any
 import click
 
 from meterlens.settings import Site, load_site
+from meterlens.studies.findings import counted
 
 __all__ = [
-    "counted",
     "number",
     "phase_labels",
     "print_json",
@@ -163,11 +163,6 @@ def _cell(x: object) -> str:
     if isinstance(x, list):
         return ", ".join(map(str, x))
     return str(x)
-
-
-def counted(count: int, noun: str) -> str:
-    """A number with its noun, in the plural where it is not one."""
-    return f"{count:,} {noun}" if count == 1 else f"{count:,} {noun}s"
 
 
 def _harmless(cell: str) -> str:

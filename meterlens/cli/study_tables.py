@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-from meterlens.cli.console import counted, number, print_table, say
+from meterlens.cli.console import number, print_table, say
+from meterlens.studies.findings import counted
 
 __all__ = ["print_check", "print_findings", "print_periods", "print_review"]
 
@@ -98,6 +99,12 @@ def print_review(result: dict[str, Any]) -> None:
         print_findings(findings, f"{month['month']}: what needs attention")
         _print_energy(month["month"], services)
         _print_quality(month["month"], services)
+    if result["months"]:
+        say("PF: kWh over √(kWh² + (lagging − leading kvarh)²), never an average. Hours of low")
+        say("PF and leading count every interval; periods only runs that pass their limits.")
+    for note in result["notes"]:
+        if note["key"] == "columns":
+            say(f"{note['service']}: {note['reason']}.")
 
 
 def _print_energy(month: str, services: Sequence[dict[str, Any]]) -> None:

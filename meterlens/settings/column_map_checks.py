@@ -247,10 +247,10 @@ def _convention_fits(convention: str, has_pf: bool, has_power: bool, mapped: Set
 
 
 def _needs_assume(convention: str | None, mapped: Set[str]) -> bool:
+    if (_REACTIVE | _LEAD_LAG | _QUADRANT) & mapped:
+        return False  # a kvar column's sign always wins
     if convention == "unsigned":
         return True
-    if (_REACTIVE | _LEAD_LAG | _QUADRANT) & mapped:
-        return False
     if convention == "from-power":
         # kW alone gives no kvar at all; with kVA, or V and I, its size but not its sign.
         return bool(_APPARENT & mapped or (_VOLTAGE & mapped and _CURRENT & mapped))

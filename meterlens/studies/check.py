@@ -7,7 +7,7 @@ from typing import Any
 
 from meterlens.settings import Service, map_digest
 from meterlens.store.database import Store
-from meterlens.studies.findings import Finding, ranked
+from meterlens.studies.findings import Finding, Severity, counted, ranked
 from meterlens.studies.flag_findings import flag_findings, mismatch_finding
 from meterlens.studies.site_time import local_iso
 
@@ -86,7 +86,7 @@ def _gap_findings(service: Service, gaps: list[dict[str, Any]]) -> list[Finding]
     longest = max(gaps, key=lambda gap: gap["missing_intervals"])
     missing = sum(gap["missing_intervals"] for gap in gaps)
     when = longest["start"][:16].replace("T", " ")
-    count = "1 gap" if len(gaps) == 1 else f"{len(gaps)} gaps"
+    count = counted(len(gaps), "gap")
     return [
         Finding(
             kind="gap",
@@ -98,8 +98,8 @@ def _gap_findings(service: Service, gaps: list[dict[str, Any]]) -> list[Finding]
             magnitude=float(missing),
             unit="intervals",
             confidence="high",
-            text=f"{count}, {missing} intervals missing in all; the longest, "
-            f"{longest['missing_intervals']} intervals, begins {when}.",
+            text=f"{count}, {counted(missing, 'interval')} missing in all; the longest, "
+            f"{counted(longest['missing_intervals'], 'interval')}, begins {when}.",
             next_step="Export these days from the meter again and ingest the file.",
         )
     ]
@@ -149,9 +149,9 @@ def _missing_power(store: Store, service: Service) -> list[Finding]:
             magnitude=float(count),
             unit="intervals",
             confidence="high",
-            text=f"{count} intervals are in the record without a total power, for want of a "
-            f"value of a loaded phase; the longest run, {longest['intervals']} intervals, "
-            f"begins {when}.",
+            text=f"{counted(count, 'interval')} in the record without a total power, for want of a "
+            "value of a loaded phase; the longest run, "
+            f"{counted(longest['intervals'], 'interval')}, begins {when}.",
             next_step="See the blank and rejected values there; export them again.",
         )
     ]
@@ -160,38 +160,42 @@ def _missing_power(store: Store, service: Service) -> list[Finding]:
 def _file_findings(store: Store, service: Service, first: str, last: str) -> list[Finding]:
     """Rows that were repeated, corrected or not readable, by what the files said."""
     files = store.rows("check/file_outcome", service=service.id)
-    wording = (
+    wording: tuple[tuple[str, str, Severity, str, str, str], ...] = (
         (
             "duplicate",
             "rows_duplicate",
             "note",
-            "repeated rows: they say what is stored already and change nothing.",
+            "row",
+            "repeated what is stored already and changed nothing.",
             "Nothing to do; overlapping exports are safe.",
         ),
         (
             "replaced",
             "rows_replaced",
             "look",
-            "rows changed a stored value; the earlier values are in the view history.",
+            "row",
+            "changed a stored value; the earlier values are in the view history.",
             "See whether the meter or the utility corrected these readings.",
         ),
         (
             "rejected",
             "rows_rejected",
             "look",
-            "rows could not be read; the view reject has each line and reason.",
-            'Run meterlens query "select * from reject", mend the export or the column map.',
+            "row",
+            "could not be read; the view reject has each line and reason.",
+            'Run meterlens query "select * from reject", correct the export or the column map.',
         ),
         (
             "impossible-value",
             "values_rejected",
             "look",
-            "impossible values, left blank; the view reject has each.",
+            "impossible value",
+            "left blank; the view reject has each.",
             'Run meterlens query "select * from reject where column is not null".',
         ),
     )
     findings = []
-    for kind, key, severity, text, step in wording:
+    for kind, key, severity, noun, text, step in wording:
         count = sum(row[key] for row in files)
         if count:
             findings.append(
@@ -201,11 +205,11 @@ def _file_findings(store: Store, service: Service, first: str, last: str) -> lis
                     phase=None,
                     start=first,
                     end=last,
-                    severity="note" if severity == "note" else "look",
+                    severity=severity,
                     magnitude=float(count),
                     unit="values" if key == "values_rejected" else "rows",
                     confidence="high",
-                    text=f"{count} {text}",
+                    text=f"{counted(count, noun)} {text}",
                     next_step=step,
                 )
             )

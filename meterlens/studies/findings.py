@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import asdict, dataclass
 from typing import Any, Literal
 
-__all__ = ["SEVERITIES", "Finding", "ranked"]
+__all__ = ["SEVERITIES", "Confidence", "Finding", "Severity", "counted", "ranked"]
 
 Severity = Literal["urgent", "act", "look", "note"]
 Confidence = Literal["high", "medium", "low"]
@@ -54,6 +54,11 @@ class Finding:
     def as_json(self) -> dict[str, Any]:
         """The finding as plain values."""
         return asdict(self)
+
+
+def counted(count: int, noun: str) -> str:
+    """A number with its noun, in the plural where it is not one."""
+    return f"{count:,} {noun}" if count == 1 else f"{count:,} {noun}s"
 
 
 def ranked(findings: list[Finding]) -> list[dict[str, Any]]:

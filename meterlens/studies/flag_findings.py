@@ -5,7 +5,7 @@ from __future__ import annotations
 from meterlens.limits import POWER_MISMATCH
 from meterlens.settings import Service
 from meterlens.store.database import Store
-from meterlens.studies.findings import Finding
+from meterlens.studies.findings import Finding, counted
 from meterlens.studies.site_time import local_iso
 
 __all__ = ["flag_findings", "mismatch_finding"]
@@ -13,23 +13,23 @@ __all__ = ["flag_findings", "mismatch_finding"]
 _FLAG_WORDING = {
     "sign-unexpected": (
         "sign-unexpected",
-        "intervals print a negative power factor although the column map says unsigned.",
+        "with a negative power factor although the column map says unsigned.",
         "Find out what the meter's sign means and set pf_convention.",
     ),
     "q-unknown": (
         "q-unknown",
-        "intervals have a reactive power whose sign nothing tells; it is left unknown.",
+        "with a reactive power whose sign nothing tells; it is left unknown.",
         "Add a kvar or a lead/lag column to the export.",
     ),
     "lead-lag-assumed": (
         "sign-assumed",
-        "intervals take lagging or leading from the column map's assumption; a reversed "
+        "with lagging or leading taken from the column map's assumption; a reversed "
         "current transformer or a leading load cannot be seen in them.",
         "Add a kvar or a lead/lag column to the export.",
     ),
     "pf-clamped": (
         "pf-clamped",
-        "intervals print a power factor a little above 1, read as 1.",
+        "with a power factor a little above 1, read as 1.",
         "Nothing to do.",
     ),
 }
@@ -55,7 +55,7 @@ def flag_findings(store: Store, service: Service) -> list[Finding]:
                 magnitude=float(row["intervals"]),
                 unit="intervals",
                 confidence="high",
-                text=f"{row['intervals']} {text}",
+                text=f"{counted(row['intervals'], 'interval')} {text}",
                 next_step=step,
             )
         )

@@ -18,8 +18,8 @@ KINDS = ("low-pf", "leading", "current-imbalance", "voltage-imbalance", "voltage
 RATING_A = {"plant": 800, "office": 315, "workshop": 250, "compressors": 200}
 #: What `check` finds, from the table of the demo's README; the compressors' meter prints no sign.
 FINDINGS = {
-    "plant": {"gap": 20, "duplicate": 8, "rejected": 3},
-    "office": {"duplicate": 96, "impossible-value": 2},
+    "plant": {"gap": 20, "duplicate": 8, "rejected": 3, "power-missing": 17},
+    "office": {"duplicate": 96, "impossible-value": 2, "power-missing": 2},
     "workshop": {"gap": 3, "replaced": 4, "rejected": 4},
     "compressors": {"gap": 96, "rejected": 1, "sign-assumed": 43104},
 }

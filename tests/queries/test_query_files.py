@@ -26,6 +26,8 @@ WHOLE_NUMBERS = {
     "p_min",
     "q_min",
     "opens::integer",
+    "intervals",
+    "(not before_without or before_end_utc <> start_utc)::integer",
     "case when p_kw is not null then interval_min else 0 end",
     "case when q_kvar is not null then interval_min else 0 end",
 }
