@@ -15,6 +15,7 @@ from meterlens.store.database import Store, stale_services, write_settings
 from meterlens.store.export_rows import ExportRows, Reject
 from meterlens.store.export_text import opened_export
 from meterlens.store.forgetting import remove_file
+from meterlens.store.interval_length import LONGEST_INTERVAL_MIN
 from meterlens.store.merge import Merge, Outcome, merge_rows
 from meterlens.store.reading import column_map_of, read_rows
 from meterlens.store.rows import UNCONTESTED, Rows
@@ -23,9 +24,6 @@ from meterlens.store.writing import keep_rejects, write_derived, write_merge
 from meterlens.store.zones import MICROSECONDS_PER_MINUTE
 
 __all__ = ["FileOutcome", "ingest_file", "rederive", "refresh"]
-
-#: The longest interval that a map may state, minutes: how far a neighbour can reach.
-_LONGEST_MIN = 1440
 
 
 @dataclass
@@ -170,7 +168,7 @@ def _incoming(rows: ExportRows, file_id: int) -> Rows:
 def _stored_near(store: Store, service: Service, incoming: Rows) -> Rows:
     if len(incoming.start) == 0:
         return Rows.empty()
-    reach = _LONGEST_MIN * MICROSECONDS_PER_MINUTE
+    reach = LONGEST_INTERVAL_MIN * MICROSECONDS_PER_MINUTE
     return stored_rows(
         store,
         "ingest/stored_reading",

@@ -14,6 +14,7 @@ from meterlens.store import timestamps
 from meterlens.store.columns import STORE_COLUMN
 from meterlens.store.export_rows import ExportRows, Reject
 from meterlens.store.export_text import FIELD_SEPARATOR, ExportText
+from meterlens.store.interval_length import interval_length
 from meterlens.store.layout import Layout
 from meterlens.store.query_files import load_query
 from meterlens.store.stamp_formats import has_offset, joined_stamp
@@ -27,7 +28,6 @@ _FIELDS = "wrong number of fields"
 _EMPTY = "no measurement at all"
 #: Stamps outside are torn or of a clock that was never set.
 _LATEST = int(np.datetime64("2100-01-01", "us").astype(np.int64))
-_LONGEST_MIN = 1440
 #: Digits of seconds since 1970 in the years that are read.
 _EPOCH_DIGITS = 10
 
@@ -60,7 +60,7 @@ class RowJudge:
         if not keep.any():
             self._no_row_at_all(position, present & whole, printed)
         blank = self._reject_lines(position, present & ~keep, whole, printed)
-        interval = self._interval_min(printed[keep])
+        interval = interval_length(self.text.file, printed[keep], self.columns)
         stamps = timestamps.read_stamps(
             printed[keep], self.columns.clock, self.columns.stamp, zone_name, interval
         )
@@ -85,7 +85,7 @@ class RowJudge:
             row_rejects=sorted(self.row_rejects, key=lambda r: r.line),
             value_rejects=value_rejects,
             values_clamped=clamped,
-            notes=self._notes(stamps),
+            notes=[*self._notes(stamps), *_doubtful_unit(value_rejects, int(keep.sum()))],
         )
 
     def _notes(self, stamps: timestamps.StampReading) -> list[str]:
@@ -181,32 +181,6 @@ class RowJudge:
             return 'It has an offset from UTC: set clock = "offset" in the column map.'
         return "Set timestamp_format to what the file prints."
 
-    def _interval_min(self, printed: IntArray) -> int:
-        stated = self.columns.interval_min
-        minutes = stated if stated is not None else timestamps.infer_interval_min(printed)
-        if minutes is None:
-            raise ExportError(
-                "has one time only, so the interval cannot be told",
-                file=self.text.file,
-                key="interval_min",
-                hint="Set interval_min in the column map.",
-            )
-        if minutes < 1 or minutes != round(minutes):
-            raise ExportError(
-                f"its rows stand {minutes:g} minutes apart; whole minutes are needed",
-                file=self.text.file,
-                key="interval_min",
-                hint="Set interval_min in the column map.",
-            )
-        if minutes > _LONGEST_MIN:
-            raise ExportError(
-                f"its rows stand {minutes:g} minutes apart; {_LONGEST_MIN} (one day) is the most",
-                file=self.text.file,
-                key="interval_min",
-                hint="Export intervals of a day or less, or set interval_min in the column map.",
-            )
-        return round(minutes)
-
     def _impossible_values(
         self, values: dict[str, FloatArray], position: IntArray
     ) -> tuple[list[Reject], int]:
@@ -221,7 +195,8 @@ class RowJudge:
                 faults.append(((x < 0) & np.isfinite(x), f"a negative {kind}"))
             elif key.startswith("pf_"):
                 size = np.abs(x)
-                above = (size > PF_CLAMP_BOUND * unity) & np.isfinite(x)
+                # Over unity first: 1.005 × 100 is a hair under 100.5.
+                above = (size / unity > PF_CLAMP_BOUND) & np.isfinite(x)
                 faults.append((above, "a power factor above 1"))
                 clamped += int(np.count_nonzero((size > unity) & np.isfinite(x) & ~above))
             for bad, reason in faults:
@@ -257,6 +232,17 @@ class RowJudge:
             reason = impossible.get((place, cell), _not_a_value(keys[cell]))
             rejects.append(Reject(int(line), keys[cell], reason, text))
         return rejects
+
+
+def _doubtful_unit(rejects: list[Reject], rows: int) -> list[str]:
+    """A word where most power factors are refused: a unit is wrong, not the meter."""
+    above = sum(reject.reason == "a power factor above 1" for reject in rejects)
+    if above * 2 <= rows:
+        return []
+    return [
+        f"{above} power factors are above 1: if the meter prints percent, set "
+        'pf_unit = "percent" in the column map and ingest again'
+    ]
 
 
 def _not_a_value(key: str) -> str:

@@ -35,6 +35,12 @@ timed as (
             when $offset_rule::varchar = 'read'
                 then regexp_replace(printed_stamp, '[Zz]$', '+00:00')
             when $offset_rule::varchar = 'none-but-utc'
+                and (
+                    suffix(printed_stamp, 'Z')
+                    or suffix(printed_stamp, 'z')
+                    or suffix(printed_stamp, '00:00')
+                    or suffix(printed_stamp, '0000')
+                )
                 then regexp_replace(printed_stamp, '([Zz]|[+-]00:?00)$', '')
             else printed_stamp
         end as stamp

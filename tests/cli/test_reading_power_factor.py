@@ -9,7 +9,7 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
-from small_site import VALUES, SmallSite, counts
+from small_site import HEADER, VALUES, SmallSite, counts, refused
 
 STAMPS = ("2026-10-01T00:00", "2026-10-01T00:15")
 PF = {"pf_a": "PFa", "pf_b": "PFb", "pf_c": "PFc"}
@@ -147,3 +147,24 @@ def test_percent_is_kept_as_printed(tmp_path: Path) -> None:
         "select pf_exported_a, pf_a from interval join interval_power using (service, start_utc)"
     )
     assert rows == [[80.0, pytest.approx(0.8)]] * 2
+
+
+def test_bound_of_percent_is_exact(tmp_path: Path) -> None:
+    """100.5 % is on the bound and clamped; most values above it call for a word."""
+    site = SmallSite(tmp_path).write(pf_a="Fa", pf_convention="unsigned", assume="lagging")
+    header = HEADER.strip() + ",Fa\n"
+    rows = [f"2026-10-01T00:{m:02d},230,231,232,10,11,12,100.5\n" for m in (0, 15, 30, 45)]
+    outcome = site.take(header + "".join(rows))
+    assert outcome["values_rejected"] == 4
+    note = site.run("ingest", "--json").document["notes"][0]["reason"]
+    assert "in the store already" in note
+    site.write(pf_a="Fa", pf_convention="unsigned", assume="lagging", pf_unit="percent")
+    (outcome,) = site.ingest()
+    assert (outcome["values_rejected"], outcome["values_clamped"]) == (0, 4)
+
+
+def test_date_without_time_is_an_error(tmp_path: Path) -> None:
+    site = SmallSite(tmp_path).write(timestamp="Day", timestamp_format="%Y-%m-%d")
+    rows = [f"2026-10-0{1 + k // 8},{k % 8}:00,230,231,232,10,11,12\n" for k in range(24)]
+    ran = site.run("ingest", site.export("Day,Time,Va,Vb,Vc,Ia,Ib,Ic\n" + "".join(rows)))
+    refused(ran, "same time as the row before", "name both in timestamp")

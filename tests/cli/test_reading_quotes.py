@@ -1,4 +1,4 @@
-"""Small exports written by hand: quotes that hold marks and line ends, and quotes that never close."""
+"""Small exports written by hand: quotes that hold marks and line ends, or never close."""
 
 from __future__ import annotations
 

@@ -198,7 +198,6 @@ def test_a_column_map_accepts(keys: dict[str, Any]) -> None:
         ({"pf_convention": "unsigned", "assume": "lagging"}, "pf_convention"),
         ({"pf_convention": "from-power", "q_kvar": "Q"}, "pf_convention"),
         (PF | {"pf_convention": "unsigned"}, "assume"),
-        (PF | {"pf_convention": "unsigned", "q_kvar": "Q"}, "assume"),
         (PF | {"pf_convention": "sign-is-power-flow"}, "assume"),
         ({"pf_convention": "from-power", "p_kw": "P", "s_kva": "S"}, "assume"),
         ({"pf_convention": "from-power", "p_kw": "P", "i_a": "I"}, "assume"),
