@@ -10,16 +10,18 @@ import re
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import duckdb
-import polars as pl
 
 from meterlens import __version__
 from meterlens.errors import RequestError, StoreError, StoreLocked
 from meterlens.settings import Site
 from meterlens.store import setting_rows
 from meterlens.store.query_files import load_query, query_names
+
+if TYPE_CHECKING:
+    import polars as pl
 
 __all__ = ["STORE_EDITION", "Store", "open_store"]
 
@@ -54,6 +56,8 @@ class Store:
 
     def frame(self, name: str, /, **parameters: Any) -> pl.DataFrame:
         """Rows of a shipped statement as a polars frame."""
+        import polars as pl  # a fifth of a second that only the pages need
+
         relation = self.con.sql(load_query(name).text, params=parameters or None)
         return pl.DataFrame(pl.from_arrow(relation.to_arrow_table()))
 

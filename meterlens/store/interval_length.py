@@ -65,7 +65,7 @@ def interval_length(file: Path, printed: IntArray, columns: ColumnMap) -> int:
         )
     if minutes > LONGEST_INTERVAL_MIN:
         raise ExportError(
-            f"its rows stand {minutes:g} minutes apart; {LONGEST_INTERVAL_MIN} (one day) is the most",
+            f"its rows stand {minutes:g} minutes apart; a day ({LONGEST_INTERVAL_MIN}) is the most",
             file=file,
             key="interval_min",
             hint="Export intervals of a day or less, or set interval_min in the column map.",
