@@ -74,6 +74,12 @@ def _with_supply(finding: Finding) -> Finding:
     )
 
 
+def _has_line_voltages(service: Service) -> bool:
+    """True where line-to-line magnitudes are metered: they need no assumed angle."""
+    columns = service.columns
+    return columns is not None and None not in (columns.v_ab, columns.v_bc, columns.v_ca)
+
+
 def _severity(kind: str, worst: dict[str, Any]) -> Severity:
     """Overload by size and length: a breaker carries a little for a while."""
     if kind == "overload" and worst["worst"] < 1.2 and worst["hours"] < 1.0:
@@ -97,7 +103,7 @@ def _finding(
     when = worst["worst_start"][:16].replace("T", " ")
     text = _sentence(service, kind, worst, f"{hours:.4g} h {often}", when, group)
     confidence: Confidence = "high"
-    if kind == "voltage-imbalance":
+    if kind == "voltage-imbalance" and not _has_line_voltages(service):
         confidence = "low"
         text += " The voltage angles are assumed 120° apart, so this is an estimate."
     elif kind in ("low-pf", "leading") and sign_is_assumed:

@@ -79,7 +79,7 @@ total as (
 select
     'main' as service, time as start_utc, 1::smallint as interval_min,
     0::smallint as utc_offset_min, 1::integer as file_id,
-    (row_number() over ())::integer as line,
+    0::integer as line,
     v_a, v_b, v_c, i_a, i_b, i_c,
     pf_a as pf_exported_a, pf_b as pf_exported_b, pf_c as pf_exported_c,
     p_a / 1000 as p_a_kw, p_b / 1000 as p_b_kw, p_c / 1000 as p_c_kw,
