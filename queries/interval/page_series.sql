@@ -11,7 +11,7 @@ select
     i_a,
     i_b,
     i_c,
-    coalesce(i_n_metered_a, i_n_a::double) as i_n_a,
+    i_n_a,
     p_kw,
     q_kvar,
     s_vector_kva,
