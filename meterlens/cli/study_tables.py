@@ -100,8 +100,8 @@ def print_review(result: dict[str, Any]) -> None:
         _print_energy(month["month"], services)
         _print_quality(month["month"], services)
     if result["months"]:
-        say("PF: kWh over √(kWh² + (lagging − leading kvarh)²), never an average. Hours of low")
-        say("PF and leading count every interval; periods only runs that pass their limits.")
+        say("PF: kWh over √(kWh² + (lagging − leading kvarh)²), never an average.")
+        say("Hours of low PF and leading count every interval, periods only longer runs.")
     for note in result["notes"]:
         if note["key"] == "columns":
             say(f"{note['service']}: {note['reason']}.")
