@@ -65,7 +65,9 @@ def test_these_are_all_the_views(fresh: Store) -> None:
     rows = fresh.con.execute(
         "select view_name from duckdb_views() where not internal order by view_name"
     ).fetchall()
-    assert [row[0] for row in rows] == sorted(PROMISED) == sorted(VIEWS)
+    # One view is the program's own: it names the places of a list column for the others.
+    public = [row[0] for row in rows if row[0] != "reading_version"]
+    assert public == sorted(PROMISED) == sorted(VIEWS)
 
 
 def test_readings_are_doubles_and_so_is_what_is_summed(fresh: Store) -> None:
